@@ -1,0 +1,68 @@
+import { execFile } from 'node:child_process'
+import { mkdtemp, rm } from 'node:fs/promises'
+import { tmpdir } from 'node:os'
+import { join } from 'node:path'
+import { promisify } from 'node:util'
+import { startServer } from '../../src/embedded/server.ts'
+
+/** A PostgreSQL that tests run on. */
+export interface TestBackend {
+  /** The superuser's URL of the maintenance database. */
+  readonly url: string
+  stop(): Promise<void>
+}
+
+const settings = {
+  fsync: 'off',
+  synchronous_commit: 'off',
+  full_page_writes: 'off',
+  max_connections: '200',
+  shared_buffers: '64MB',
+  max_wal_size: '512MB',
+  io_method: 'sync',
+  autovacuum_naptime: '5min',
+  max_prepared_transactions: '10',
+}
+
+/**
+ * The server named by HEDGEROW_TEST_DATABASE_URL where it is set; a container of the image HEDGEROW_TEST_IMAGE where that is set; else the embedded server, in a directory that goes
+ * away with it.
+ */
+export async function testBackend(environment: NodeJS.ProcessEnv = process.env): Promise<TestBackend> {
+  const given = environment['HEDGEROW_TEST_DATABASE_URL'] ?? ''
+  if (given !== '') return { url: given, stop: async () => undefined }
+  const image = environment['HEDGEROW_TEST_IMAGE'] ?? ''
+  return image === '' ? await embedded() : await container(image)
+}
+
+async function embedded(): Promise<TestBackend> {
+  const directory = await mkdtemp(join(tmpdir(), 'hedgerow-test-'))
+  const server = await startServer({ directory, settings })
+  return {
+    url: server.url(),
+    stop: async () => {
+      await server.stop()
+      await rm(directory, { recursive: true, force: true })
+    },
+  }
+}
+
+async function container(image: string): Promise<TestBackend> {
+  await promisify(execFile)('docker', ['info'], { timeout: 20_000 }).catch(() => {
+    throw new Error(`HEDGEROW_TEST_IMAGE is ${image}, but no Docker engine answers: start one, or unset it to test on the embedded server`)
+  })
+  const { GenericContainer, Wait } = await import('testcontainers')
+  const password = 'harbour'
+  const started = await new GenericContainer(image)
+    .withEnvironment({ POSTGRES_PASSWORD: password })
+    .withCommand(['postgres', '-c', 'fsync=off', '-c', 'max_connections=200', '-c', 'max_prepared_transactions=10'])
+    .withExposedPorts(5432)
+    .withWaitStrategy(Wait.forLogMessage(/database system is ready to accept connections/, 2))
+    .start()
+  return {
+    url: `postgresql://postgres:${password}@${started.getHost()}:${started.getMappedPort(5432)}/postgres`,
+    stop: async () => {
+      await started.stop()
+    },
+  }
+}
