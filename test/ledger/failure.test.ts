@@ -65,7 +65,7 @@ describe('a debit whose connection is lost while the commit is on its way', () =
     const ana = account(`f1/${spent}`, cap('9', '9'))
     const relay = await relayTo(url)
     const cut = await open(relay.url, 1)
-    relay.cutAt('commit', sentOn)
+    relay.cutAt('commit\0', sentOn)
     await expect(cut.debit([ana], charge('1', '1'), null, note)).rejects.toMatchObject({ code: 'ledger' })
     await waitFor(async () => (await sql(url, `select from pg_locks l join pg_class c on c.oid = l.relation where c.relname = 'head' and l.mode = 'RowExclusiveLock'`)).length === 0)
     expect((await ledger.balances([ana]))[0]?.epsilonSpent?.toString()).toBe(spent)
