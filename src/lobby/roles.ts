@@ -1,0 +1,140 @@
+import type pg from 'pg'
+import type { Policies } from '../policy/data-set.ts'
+import { LobbyProblem } from './problem.ts'
+import { literal, name } from './quote.ts'
+import { rowsOf, sqlstateOf } from './session.ts'
+
+/** What an analyst's sessions may use of the lobby. Times and sizes as PostgreSQL writes them: '5min', '1GB'. */
+export interface AnalystLimits {
+  readonly statementTimeout: string
+  readonly tempFileLimit: string
+  readonly workMem: string
+  readonly connections: number
+}
+
+export const defaultLimits: AnalystLimits = { statementTimeout: '5min', tempFileLimit: '2GB', workMem: '16MB', connections: 20 }
+
+/**
+ * hedgerow_owner owns shells, copies and functions; hedgerow_analyst is what every analyst is a member of; hedgerow_reader is Hedgerow's own view of the
+ * names an analyst sees. Nobody logs in as one of them.
+ */
+const groupRoles = ['hedgerow_owner', 'hedgerow_analyst', 'hedgerow_reader'] as const
+
+export interface RoleOutcome {
+  /** Every analyst this lobby knows, those that left the policy included. */
+  readonly analysts: readonly string[]
+  readonly removed: readonly string[]
+}
+
+/** Makes the three roles of Hedgerow's own, without log-in. */
+export async function installGroupRoles(client: pg.Client, superuser: boolean): Promise<void> {
+  for (const role of groupRoles) {
+    const found = await rowsOf(client, 'SELECT FROM pg_catalog.pg_roles WHERE rolname = $1', [role])
+    if (found.length === 0) await client.query(`CREATE ROLE ${role} NOLOGIN`)
+    await client.query(`ALTER ROLE ${role} NOLOGIN NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}PASSWORD NULL`)
+    if (!superuser) await client.query(`GRANT ${role} TO CURRENT_USER`)
+  }
+}
+
+/** Every analyst made by an earlier load, and those of the policy. */
+export async function knownAnalysts(client: pg.Client, policies: Policies): Promise<RoleOutcome> {
+  const members = await rowsOf(
+    client,
+    `SELECT r.rolname FROM pg_catalog.pg_auth_members m JOIN pg_catalog.pg_roles r ON r.oid = m.member
+      WHERE m.roleid = pg_catalog.to_regrole('hedgerow_analyst') AND r.rolname <> current_user ORDER BY 1`,
+  )
+  const made = members.map(([role]) => role ?? '')
+  return { analysts: [...new Set([...made, ...policies.analysts.keys()])], removed: made.filter((role) => !policies.analysts.has(role)) }
+}
+
+/**
+ * INVARIANT ANALYSTS AS DECLARED: after each load an analyst's role has the policy's password, attributes, memberships and settings and no others, whatever
+ * the analyst changed about it; who left the policy can no longer log in.
+ */
+export async function installAnalysts(client: pg.Client, policies: Policies, known: RoleOutcome, limits: AnalystLimits, superuser: boolean, warn: (text: string) => void): Promise<void> {
+  for (const role of known.removed) await client.query(`ALTER ROLE ${name(role)} NOLOGIN PASSWORD NULL`)
+  for (const analyst of policies.analysts.values()) {
+    await createAnalyst(client, analyst.name)
+    await revokeMemberships(client, analyst.name)
+    const login = analyst.login === null ? 'NOLOGIN PASSWORD NULL' : `LOGIN PASSWORD ${literal(analyst.login)}`
+    const attributes = `INHERIT NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}CONNECTION LIMIT ${limits.connections} VALID UNTIL 'infinity'`
+    await client.query(`ALTER ROLE ${name(analyst.name)} ${attributes} ${login}`)
+    await putBackSettings(client, analyst.name, limits, warn)
+  }
+}
+
+async function createAnalyst(client: pg.Client, role: string): Promise<void> {
+  const [found] = await rowsOf(
+    client,
+    `SELECT EXISTS (SELECT FROM pg_catalog.pg_auth_members m WHERE m.member = r.oid AND m.roleid = pg_catalog.to_regrole('hedgerow_analyst')), r.rolname = current_user
+       FROM pg_catalog.pg_roles r WHERE r.rolname = $1`,
+    [role],
+  )
+  if (found === undefined) {
+    await client.query(`CREATE ROLE ${name(role)} NOLOGIN`)
+    await client.query(`GRANT hedgerow_analyst TO ${name(role)}`)
+  } else if (found[0] !== 't' || found[1] === 't') {
+    throw new LobbyProblem(`the lobby's server has a role ${role} that Hedgerow did not make`, `drop that role or give the analyst ${role} another name`)
+  }
+}
+
+async function revokeMemberships(client: pg.Client, role: string): Promise<void> {
+  const rows = await rowsOf(
+    client,
+    `SELECT g.rolname, r.rolname FROM pg_catalog.pg_auth_members m JOIN pg_catalog.pg_roles g ON g.oid = m.roleid JOIN pg_catalog.pg_roles r ON r.oid = m.member
+      WHERE (r.rolname = $1 AND g.rolname <> 'hedgerow_analyst') OR (g.rolname = $1 AND r.rolname <> current_user)`,
+    [role],
+  )
+  for (const [group, member] of rows) await client.query(`REVOKE ${name(group ?? '')} FROM ${name(member ?? '')}`)
+}
+
+async function putBackSettings(client: pg.Client, role: string, limits: AnalystLimits, warn: (text: string) => void): Promise<void> {
+  await client.query(`ALTER ROLE ${name(role)} RESET ALL`)
+  const rows = await rowsOf(
+    client,
+    `SELECT d.datname FROM pg_catalog.pg_db_role_setting s JOIN pg_catalog.pg_database d ON d.oid = s.setdatabase
+       JOIN pg_catalog.pg_roles r ON r.oid = s.setrole WHERE r.rolname = $1`,
+    [role],
+  )
+  for (const [database] of rows) await client.query(`ALTER ROLE ${name(role)} IN DATABASE ${name(database ?? '')} RESET ALL`)
+  for (const [setting, value] of Object.entries(roleSettings(limits))) {
+    await client.query('SAVEPOINT one_setting')
+    try {
+      await client.query(`ALTER ROLE ${name(role)} SET ${setting} = ${literal(value)}`)
+      await client.query('RELEASE SAVEPOINT one_setting')
+    } catch (error) {
+      await client.query('ROLLBACK TO SAVEPOINT one_setting')
+      if (sqlstateOf(error) !== '42501') throw error
+      warn(`${setting} is not set for analysts: grant SET ON PARAMETER ${setting} to the lobby's role`)
+    }
+  }
+}
+
+/** The server's log must not keep what analysts write: literals in a statement can be about people, and a DO block can log anything. */
+function roleSettings(limits: AnalystLimits): Readonly<Record<string, string>> {
+  return {
+    row_security: 'off',
+    statement_timeout: limits.statementTimeout,
+    work_mem: limits.workMem,
+    temp_file_limit: limits.tempFileLimit,
+    client_connection_check_interval: '500ms',
+    log_statement: 'none',
+    log_duration: 'off',
+    log_min_duration_statement: '-1',
+    log_min_duration_sample: '-1',
+    log_transaction_sample_rate: '0',
+    log_min_error_statement: 'panic',
+    log_min_messages: 'fatal',
+  }
+}
+
+/** Ends the sessions of analysts in databases they may not be in, and of analysts without log-in. Returns whose. */
+export async function endStrayedSessions(client: pg.Client, analysts: readonly string[]): Promise<readonly string[]> {
+  const rows = await rowsOf(
+    client,
+    `SELECT a.usename, pg_catalog.pg_terminate_backend(a.pid) FROM pg_catalog.pg_stat_activity a JOIN pg_catalog.pg_roles r ON r.oid = a.usesysid
+      WHERE a.usename = ANY ($1::text[]) AND a.datname IS NOT NULL AND (NOT r.rolcanlogin OR NOT pg_catalog.has_database_privilege(r.oid, a.datid, 'CONNECT'))`,
+    [analysts],
+  )
+  return rows.map(([role]) => role ?? '')
+}
