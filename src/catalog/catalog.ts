@@ -36,7 +36,7 @@ export interface CatalogTable {
   /** Column sets proved unique: valid, immediate, non-partial unique index on plain columns, all NOT NULL. */
   readonly uniqueKeys: readonly (readonly string[])[]
   readonly foreignKeys: readonly ForeignKey[]
-  /** schema.table of every relation a view reads, at any depth; [] for tables. */
+  /** schema.table of every relation a view reads, at any depth, and of the children and partitions of a table; 'schema.name()' for a function that a view calls. */
   readonly readsFrom: readonly string[]
 }
 
