@@ -7,15 +7,16 @@ import { bitLength, integerSquareRoot } from './significant.ts'
 /** Which end of the enclosure a caller wants: the result is never on the wrong side of the true value. */
 export type Side = 'up' | 'down'
 
-/** Beyond this exp is not represented: above it is our bug, below it is enclosed in [0, 2^-8192]. */
-const exponentLimit = 6000n
-const least = Fraction.make(1n, 1n << 8192n)
+/** e^x is not told from 0 below the lower end, where it is enclosed in [0, 2^-2016]; above the upper end it is not asked for. */
+const leastExponent = -1400n
+const greatestExponent = 6000n
+const least = Fraction.make(1n, 1n << 2016n)
 
 /** e^x; relative width below 2^-bits. A BrokenCheck for x > 6000. */
 export function expInterval(x: Fraction, bits: bigint): Interval {
   if (x.isZero()) return Interval.of(Fraction.one, bits)
-  if (x.n < -exponentLimit * x.d) return Interval.between(Fraction.zero, least, bits)
-  check(x.n <= exponentLimit * x.d, 'e^x is asked for within range')
+  if (x.n < leastExponent * x.d) return Interval.between(Fraction.zero, least, bits)
+  check(x.n <= greatestExponent * x.d, 'e^x is asked for within range')
   const p = bits + 32n
   const fixed = (x.n << p) / x.d
   const ln2 = fixedLn2(p)

@@ -1,14 +1,43 @@
-import { BrokenCheck } from '../base/check.ts'
-import type { Fraction } from '../base/fraction.ts'
+import { check } from '../base/check.ts'
+import { Fraction } from '../base/fraction.ts'
 import type { Spent } from './accept.ts'
+import { epsilonOf } from './convert.ts'
 import type { AccountCap, Charge } from './ledger.ts'
 
-/** How many more times the account can bear the charge; display only. */
-export function timesLeft(_cap: AccountCap, _spent: Spent, _charge: Charge): bigint {
-  throw new BrokenCheck('timesLeft')
+/** How many more times the account can bear the charge, by the acceptance rule: as often as the pot allows, on the track that lasts longer. The charge costs some rho. */
+export function timesLeft(cap: AccountCap, spent: Spent, charge: Charge): bigint {
+  check(charge.rho.isPositive(), 'a charge costs something')
+  const onRho = timesWithin(cap.rhoCap, spent.rho, charge.rho)
+  const closed = spent.epsilon === null || charge.epsilon === null
+  const onEpsilon = closed ? 0n : timesWithin(cap.epsilon, spent.epsilon, charge.epsilon)
+  const onTracks = onRho > onEpsilon ? onRho : onEpsilon
+  if (charge.delta.isZero()) return spent.delta.isAtMost(cap.deltaPot) ? onTracks : 0n
+  const onPot = timesWithin(cap.deltaPot, spent.delta, charge.delta)
+  return onPot < onTracks ? onPot : onTracks
 }
 
-/** The epsilon that the spending amounts to at the cap's delta, rounded up; display only. */
-export function epsilonSpent(_cap: AccountCap, _spent: Spent): Fraction {
-  throw new BrokenCheck('epsilonSpent')
+function timesWithin(cap: Fraction, spent: Fraction, each: Fraction): bigint {
+  if (!spent.add(each).isAtMost(cap)) return 0n
+  return cap.sub(spent).div(each).floor()
+}
+
+/**
+ * The epsilon that the spending amounts to at the cap's delta, rounded up; for display: the guarantee is the cap. The lesser of the two tracks' readings; null where
+ * neither is open (a pure account after Gaussian noise, which the rule never lets happen).
+ */
+export function epsilonSpent(cap: AccountCap, spent: Spent): Fraction | null {
+  const delta = cap.delta.sub(cap.deltaPot)
+  const onRho = delta.isPositive() ? epsilonOf(spent.rho, delta) : null
+  if (onRho === null || spent.epsilon === null) return onRho ?? spent.epsilon
+  return onRho.min(spent.epsilon)
+}
+
+/**
+ * Whether a Gaussian release now would leave fewer of these default statements than a Laplace release: an account's first Gaussian release closes its pure track for
+ * good. `auto` noise keeps to Laplace then.
+ */
+export function gaussianCostsStatements(cap: AccountCap, spent: Spent, gaussian: Charge, laplace: Charge): boolean {
+  if (spent.epsilon === null) return false
+  const afterGaussian = { epsilon: null, rho: spent.rho.add(gaussian.rho), delta: spent.delta.add(gaussian.delta) }
+  return timesLeft(cap, afterGaussian, gaussian) + 1n < timesLeft(cap, spent, laplace)
 }
