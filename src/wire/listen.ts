@@ -1,8 +1,9 @@
 import { randomBytes } from 'node:crypto'
-import { createServer, type AddressInfo, type Server, type Socket } from 'node:net'
+import { createServer, type AddressInfo, type Socket } from 'node:net'
 import { createSecureContext } from 'node:tls'
 import { complaintFrame } from './error-frame.ts'
 import { farewell } from './farewell.ts'
+import { listening } from './listening.ts'
 import { receive, type Reception } from './receive.ts'
 import type { Session } from './relay.ts'
 import type { WireOptions } from './wire-options.ts'
@@ -75,14 +76,4 @@ export async function serveClients(options: WireOptions): Promise<Wire> {
       clearTimeout(strays)
     },
   }
-}
-
-function listening(server: Server, port: number, host: string): Promise<void> {
-  return new Promise((resolve, reject) => {
-    server.once('error', reject)
-    server.listen(port, host, () => {
-      server.off('error', reject)
-      resolve()
-    })
-  })
 }
