@@ -38,9 +38,9 @@ export interface WindowFrame {
 }
 
 export interface Window {
-  /** The name it is defined under in a WINDOW clause; '' otherwise. */
+  /** In a WINDOW clause the name it is defined under; in OVER w, without parentheses, the window meant; '' otherwise. */
   readonly name: string
-  /** The named window it refers to or extends; '' otherwise. */
+  /** The named window it extends, as in OVER (w ORDER BY …); '' otherwise. */
   readonly refers: string
   readonly partition: readonly Expr[]
   readonly order: readonly SortItem[]
@@ -236,6 +236,6 @@ export interface Placed {
   readonly start: number
   readonly length: number
   readonly statement: Statement
-  /** Every relation, function and type name that occurs anywhere in it, read or not. */
+  /** Every relation named anywhere in it, read or not, each once; common tables of its own among them. */
   readonly relations: readonly Name[]
 }
