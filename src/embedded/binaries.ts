@@ -1,5 +1,5 @@
 import { constants } from 'node:fs'
-import { access, cp, lstat, mkdir, mkdtemp, readFile, rename, rm, stat, symlink } from 'node:fs/promises'
+import { access, chmod, cp, lstat, mkdir, mkdtemp, readdir, readFile, realpath, rename, rm, stat, symlink } from 'node:fs/promises'
 import { createRequire } from 'node:module'
 import { homedir, tmpdir } from 'node:os'
 import { basename, dirname, join } from 'node:path'
@@ -58,7 +58,7 @@ async function linked(native: string, links: readonly Link[]): Promise<boolean> 
 async function reachableByOthers(file: string): Promise<boolean> {
   if (((await stat(file)).mode & 0o005) !== 0o005) return false
   for (let directory = dirname(file); ; directory = dirname(directory)) {
-    if (((await stat(directory)).mode & 0o005) !== 0o005 && ((await stat(directory)).mode & 0o001) === 0) return false
+    if (((await stat(directory)).mode & 0o001) === 0) return false
     if (dirname(directory) === directory) return true
   }
 }
@@ -72,19 +72,38 @@ async function copied(native: string, account: ServerAccount | undefined): Promi
   const scratch = await mkdtemp(join(cache, 'copying-'))
   try {
     const copy = join(scratch, 'native')
-    await cp(native, copy, { recursive: true, verbatimSymlinks: true })
+    await cp(native, copy, { recursive: true, verbatimSymlinks: true, mode: constants.COPYFILE_FICLONE })
     await linked(copy, await missingLinks(copy))
-    await rename(target, join(scratch, 'broken')).catch(() => undefined)
-    await rename(copy, target).catch(async (error: unknown) => {
-      if (!(await wholeCopy(native, target))) throw error
-    })
+    await openForReading(copy)
+    await put(copy, target, async () => await wholeCopy(native, target), join(scratch, 'broken'))
     return target
   } finally {
     await rm(scratch, { recursive: true, force: true })
   }
 }
 
-/** A cache in a temporary directory loses files to its sweeper; the sizes of the three programs and of the links' targets tell. */
+/** Another start may have put the same copy there meanwhile: only a broken one makes way. */
+async function put(copy: string, target: string, isWhole: () => Promise<boolean>, aside: string): Promise<void> {
+  try {
+    await rename(copy, target)
+  } catch {
+    if (await isWhole()) return
+    await rename(target, aside)
+    await rename(copy, target)
+  }
+}
+
+/** Whatever umask npm ran under: the programs hold no secret, and the server's account must be able to read them. */
+async function openForReading(directory: string): Promise<void> {
+  await chmod(directory, 0o755)
+  for (const entry of await readdir(directory, { withFileTypes: true, recursive: true })) {
+    const path = join(entry.parentPath, entry.name)
+    if (entry.isDirectory()) await chmod(path, 0o755)
+    else if (entry.isFile()) await chmod(path, ((await stat(path)).mode & 0o100) === 0 ? 0o644 : 0o755)
+  }
+}
+
+/** A temporary directory loses files to its sweeper: a few telling files must be there and as long as their originals. */
 async function wholeCopy(native: string, target: string): Promise<boolean> {
   const parts = ['bin/postgres', 'bin/initdb', 'share/postgresql/postgres.bki', 'share/postgresql/extension/dblink.control', 'lib/postgresql/dblink.so']
   const same = await Promise.all(
@@ -101,10 +120,10 @@ async function cacheDirectory(account: ServerAccount | undefined): Promise<strin
   const candidates = [account === undefined ? join(homedir(), '.cache', 'hedgerow') : '/var/cache/hedgerow', join(tmpdir(), `hedgerow-${us}`)]
   for (const candidate of candidates) {
     try {
-      await mkdir(candidate, { recursive: true, mode: 0o755 })
+      if ((await mkdir(candidate, { recursive: true })) !== undefined) await chmod(candidate, 0o755)
       const { uid, mode } = await stat(candidate)
       const ours = uid === us && (mode & 0o022) === 0
-      if (ours && (account === undefined || (await reachableByOthers(candidate)))) return candidate
+      if (ours && (account === undefined || (await reachableByOthers(candidate)))) return await realpath(candidate)
     } catch {
       continue
     }

@@ -1,5 +1,5 @@
 import { execFile } from 'node:child_process'
-import { readdir, readFile, readlink, realpath } from 'node:fs/promises'
+import { readdir, readFile, readlink, realpath, rm } from 'node:fs/promises'
 import { join } from 'node:path'
 import { setTimeout as sleep } from 'node:timers/promises'
 import { promisify } from 'node:util'
@@ -60,6 +60,16 @@ export async function endServersOf(dataDirectory: string): Promise<void> {
     for (const until = Date.now() + waitMs; Date.now() < until; await sleep(50)) if ((await serversOf(dataDirectory)).length === 0) return
   }
   throw new EmbeddedServerError(`a PostgreSQL left over in ${dataDirectory} does not end`, 'end it by hand, then start again')
+}
+
+/**
+ * Removes the pid file of a server that is gone, after `endServersOf`. PostgreSQL refuses to start where the number in it is some living process's, or a zombie's. It stays where
+ * processes cannot be told by their directory: PostgreSQL then finds orphans through it.
+ */
+export async function removeStalePidFile(dataDirectory: string): Promise<void> {
+  const file = join(dataDirectory, 'postmaster.pid')
+  const pid = Number.parseInt(await readFile(file, 'utf8').catch(() => ''), 10)
+  if (process.platform === 'linux' || (Number.isInteger(pid) && (await processIdentity(pid)) !== undefined)) await rm(file, { force: true })
 }
 
 /** Sends the signal; a process that is gone already is no error. */

@@ -8,7 +8,7 @@ import { EmbeddedServerError } from './embedded-error.ts'
 import { holdDirectory } from './hold.ts'
 import { freePort, startPostmaster } from './postmaster.ts'
 import type { Postmaster } from './postmaster.ts'
-import { endServersOf } from './processes.ts'
+import { endServersOf, removeStalePidFile } from './processes.ts'
 
 const host = '127.0.0.1'
 
@@ -63,6 +63,7 @@ export async function startServer(options: EmbeddedServerOptions): Promise<Embed
     const dataDirectory = join(home, 'data')
     const account = serverAccount(dataDirectory)
     await endServersOf(dataDirectory)
+    await removeStalePidFile(dataDirectory)
     const runnable = await runnableBinaries(native, account)
     const password = await superuserPassword(join(home, 'password'), dataDirectory)
     const settings: Readonly<Record<string, string>> = { ...fixedSettings, ...options.settings }

@@ -1,8 +1,9 @@
 import { execFile } from 'node:child_process'
-import { mkdtemp, rm } from 'node:fs/promises'
+import { mkdtemp, readdir, rm, stat } from 'node:fs/promises'
 import { tmpdir } from 'node:os'
-import { join } from 'node:path'
+import { dirname, join } from 'node:path'
 import { promisify } from 'node:util'
+import { serversOf } from '../../src/embedded/processes.ts'
 import { startServer } from '../../src/embedded/server.ts'
 
 /** A PostgreSQL that tests run on. */
@@ -36,6 +37,7 @@ export async function testBackend(environment: NodeJS.ProcessEnv = process.env):
 }
 
 async function embedded(): Promise<TestBackend> {
+  await sweep()
   const directory = await mkdtemp(join(tmpdir(), 'hedgerow-test-'))
   const server = await startServer({ directory, settings })
   return {
@@ -44,6 +46,16 @@ async function embedded(): Promise<TestBackend> {
       await server.stop()
       await rm(directory, { recursive: true, force: true })
     },
+  }
+}
+
+/** What killed runs left behind an hour ago or longer; the servers themselves ended with them. */
+async function sweep(): Promise<void> {
+  const names = (await readdir(tmpdir())).filter((name) => name.startsWith('hedgerow-test-'))
+  for (const directory of names.map((name) => join(tmpdir(), name, 'postgresql'))) {
+    const found = await stat(join(directory, 'password')).catch(() => undefined)
+    if (found === undefined || Date.now() - found.mtimeMs < 3_600_000 || (await serversOf(join(directory, 'data'))).length > 0) continue
+    await rm(dirname(directory), { recursive: true, force: true }).catch(() => undefined)
   }
 }
 
