@@ -13,9 +13,11 @@ export class Refusal extends Error {
   readonly hint: string
   /** Byte offset into the analyst's text, -1 where there is no place. */
   readonly at: number
+  readonly facts: Facts
   constructor(code: RefusalCode, facts: Facts, at: number) {
     super(`${fill(refusals[code].message, facts)} [${code}]`)
     this.code = code
+    this.facts = facts
     this.sqlstate = refusals[code].sqlstate
     this.hint = fill(refusals[code].hint, facts)
     this.at = at
@@ -25,6 +27,16 @@ export class Refusal extends Error {
 /** Turns the statement away. `facts` fill the `{name}` places of the registry's message and hint. */
 export function refuse(code: RefusalCode, facts: Facts = {}, at = -1): never {
   throw new Refusal(code, facts, at)
+}
+
+/** Runs `work`; a refusal out of it gets the facts it lacks, such as an example made of the statement's own tables. */
+export function withFacts<T>(facts: () => Facts, work: () => T): T {
+  try {
+    return work()
+  } catch (problem) {
+    if (problem instanceof Refusal) throw new Refusal(problem.code, { ...facts(), ...problem.facts }, problem.at)
+    throw problem
+  }
 }
 
 function fill(text: string, facts: Facts): string {

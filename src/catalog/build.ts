@@ -1,0 +1,77 @@
+import type { Call, Constant, Expr, TypeRef } from '../sql/tree.ts'
+
+/** Small makers of trees that Hedgerow prints itself; positions are -1. */
+
+export function typeRef(schema: string, name: string): TypeRef {
+  return { name: [schema, name], modifiers: [], array: [], setof: false }
+}
+
+export function constant(value: Constant): Expr {
+  return { kind: 'constant', constant: value, at: -1 }
+}
+
+export function text(value: string): Expr {
+  return constant({ kind: 'string', value })
+}
+
+/** A non-negative integer below 2^31 as a constant; any other as a cast text, so that its type never depends on its size. */
+export function integer(value: bigint): Expr {
+  if (value >= 0n && value < 2147483648n) return constant({ kind: 'integer', value: value.toString() })
+  return cast(text(value.toString()), 'int8')
+}
+
+/** An exact decimal text as numeric. */
+export function numeric(value: string): Expr {
+  return cast(text(value), 'numeric')
+}
+
+export function nothing(): Expr {
+  return constant({ kind: 'null' })
+}
+
+export function cast(arg: Expr, name: string, schema = 'pg_catalog'): Expr {
+  return { kind: 'cast', arg, type: typeRef(schema, name), at: -1 }
+}
+
+export function column(...name: readonly string[]): Expr {
+  return { kind: 'column', name, star: false, at: -1 }
+}
+
+export function operator(left: Expr | null, name: string, right: Expr): Expr {
+  return { kind: 'operator', name: [name], left, right, at: -1 }
+}
+
+export function logic(word: 'and' | 'or', args: readonly Expr[]): Expr {
+  const [first] = args
+  return args.length === 1 && first !== undefined ? first : { kind: 'logic', word, args, at: -1 }
+}
+
+export function isNull(arg: Expr, negated = false): Expr {
+  return { kind: 'is-null', arg, negated, at: -1 }
+}
+
+export function when(test: Expr, then: Expr, otherwise: Expr | null): Expr {
+  return { kind: 'case', arg: null, whens: [{ when: test, then }], otherwise, at: -1 }
+}
+
+export function extreme(word: 'greatest' | 'least', ...args: readonly Expr[]): Expr {
+  return { kind: 'extreme', word, args, at: -1 }
+}
+
+/** A call of a function of pg_catalog. */
+export function call(name: string, args: readonly Expr[], more: Partial<Pick<Call, 'star' | 'distinct' | 'filter' | 'over'>> = {}): Call {
+  return {
+    kind: 'call',
+    name: ['pg_catalog', name],
+    args,
+    star: more.star ?? false,
+    distinct: more.distinct ?? false,
+    variadic: false,
+    order: [],
+    within: false,
+    filter: more.filter ?? null,
+    over: more.over ?? null,
+    syntax: 'plain',
+    at: -1,
+  }
+}

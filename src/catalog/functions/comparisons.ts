@@ -1,0 +1,52 @@
+import { refuse } from '../../base/refusal.ts'
+import { isFixed, type Scalar } from '../scalar.ts'
+import { isNumber, sameType, scalarType, type ScalarType } from '../scalar-type.ts'
+import { apply } from './apply.ts'
+import { comparable } from './numbers.ts'
+
+const bool = scalarType('bool')
+const instants: ReadonlySet<string> = new Set(['date', 'timestamp', 'timestamptz'])
+
+/** Whether PostgreSQL compares the two types by an operator that cannot raise. */
+function match(a: ScalarType, b: ScalarType): boolean {
+  if (isNumber(a) && isNumber(b)) return true
+  if (instants.has(a.family) && instants.has(b.family)) return true
+  if (a.family === 'enum' || b.family === 'enum') return sameType(a, b)
+  return a.family === b.family && a.family !== 'unknown'
+}
+
+/** A bare string takes the type of what it is compared with; the lobby has already read it as that type. */
+export function settle(scalar: Scalar, type: ScalarType): Scalar {
+  if (scalar.type.family !== 'unknown') return scalar
+  const settled = type.family === 'unknown' ? scalarType('text') : type.name === 'varchar' || type.name === 'bpchar' ? { ...type } : type
+  return { ...scalar, type: settled, carrier: 'own' }
+}
+
+/** The type that several values share, as in CASE, coalesce, IN: the first known one, numbers promoted by the caller. */
+export function commonType(scalars: readonly Scalar[]): ScalarType {
+  return scalars.find(scalar => scalar.type.family !== 'unknown')?.type ?? scalarType('text')
+}
+
+/** a = b and its kin, also IS [NOT] DISTINCT FROM. */
+export function compare(form: '=' | '<>' | '<' | '<=' | '>' | '>=' | 'distinct' | 'not-distinct', left: Scalar, right: Scalar, at: number): Scalar {
+  const [a, b] = [settle(left, right.type), settle(right, left.type)]
+  if (!match(a.type, b.type)) refuse('expr.unsupported', { what: `${form} between ${a.type.name} and ${b.type.name}` }, at)
+  const [x, y] = comparable(a, b)
+  return apply(form, [x, y], bool, { at, ...(form === 'distinct' || form === 'not-distinct' ? { nullable: false } : {}) })
+}
+
+/** a IN (…) over a list of the statement's own values or of the same row's. */
+export function inList(arg: Scalar, list: readonly Scalar[], negated: boolean, at: number): Scalar {
+  const settled = settle(arg, commonType(list))
+  const entries = list.map(entry => settle(entry, settled.type))
+  for (const entry of entries) {
+    if (!match(settled.type, entry.type)) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${entry.type.name}` }, entry.at)
+    comparable(settled, entry)
+  }
+  return apply(negated ? 'not-in' : 'in', [settled, ...entries], bool, { at })
+}
+
+/** Whether a value may be put into a comparison as it stands. */
+export function isPlain(scalar: Scalar): boolean {
+  return scalar.node.kind === 'column' || isFixed(scalar)
+}

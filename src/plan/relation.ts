@@ -1,0 +1,72 @@
+import type { Scalar } from '../catalog/scalar.ts'
+import type { DataColumn, PrivateTable, PublishedTable } from '../policy/data-set.ts'
+
+/** Rows the statement itself lists: VALUES or generate_series over fixed values. Published by nature. */
+export interface ListedRows {
+  readonly kind: 'listed'
+  readonly name: string
+  readonly source: { readonly kind: 'values'; readonly rows: readonly (readonly Scalar[])[] } | { readonly kind: 'series'; readonly args: readonly Scalar[] }
+  readonly columns: ReadonlyMap<string, DataColumn>
+}
+
+/** One reading of one table in the FROM of a block; it is printed as `s<index>`. */
+export interface Scan {
+  readonly index: number
+  readonly table: PrivateTable | PublishedTable | ListedRows
+  readonly at: number
+}
+
+/** The FROM and WHERE of a block. RIGHT joins are turned into LEFT; comma lists and CROSS JOIN are inner joins without a condition. */
+export type Source =
+  | { readonly kind: 'scan'; readonly scan: Scan }
+  | { readonly kind: 'join'; readonly type: 'inner' | 'left'; readonly left: Source; readonly right: Source; readonly on: readonly Scalar[]; readonly at: number }
+  | { readonly kind: 'filter'; readonly input: Source; readonly tests: readonly Scalar[] }
+
+export function* scansIn(source: Source): Generator<Scan> {
+  switch (source.kind) {
+    case 'scan':
+      yield source.scan
+      return
+    case 'filter':
+      yield* scansIn(source.input)
+      return
+    case 'join':
+      yield* scansIn(source.left)
+      yield* scansIn(source.right)
+  }
+}
+
+export function indexesIn(source: Source): ReadonlySet<number> {
+  return new Set([...scansIn(source)].map(scan => scan.index))
+}
+
+/** Whether any private table is read in it. */
+export function isPrivate(source: Source): boolean {
+  for (const scan of scansIn(source)) if (scan.table.kind === 'private') return true
+  return false
+}
+
+/** The conjuncts of a condition. */
+export function conjuncts(test: Scalar): readonly Scalar[] {
+  return test.node.kind === 'apply' && test.node.form === 'and' ? test.node.args.flatMap(conjuncts) : [test]
+}
+
+/** A pair of columns that a conjunct equates, or null. */
+export function equated(test: Scalar): readonly [ColumnRef, ColumnRef] | null {
+  if (test.node.kind !== 'apply' || test.node.form !== '=') return null
+  const [a, b] = test.node.args
+  if (a?.node.kind !== 'column' || b?.node.kind !== 'column' || a.node.clamped !== null || b.node.clamped !== null) return null
+  return [
+    { scan: a.node.scan, column: a.node.column },
+    { scan: b.node.scan, column: b.node.column },
+  ]
+}
+
+export interface ColumnRef {
+  readonly scan: number
+  readonly column: string
+}
+
+export function refKey(ref: ColumnRef): string {
+  return `${String(ref.scan)}.${ref.column}`
+}
