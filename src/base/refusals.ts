@@ -23,6 +23,12 @@ export const refusals = {
     hint: 'Write the same condition flatter, for example with IN or = ANY (ARRAY[…]) instead of nested parentheses.',
     why: 'the parser has a fixed stack',
   },
+  'text.too-slow': {
+    sqlstate: '54000',
+    message: 'the statement took too long to read',
+    hint: 'Send it again; where that does not help, write it shorter, for example with IN or = ANY (ARRAY[…]) instead of a long chain of conditions.',
+    why: 'one statement must not keep the parser from the others',
+  },
   'text.unreadable': {
     sqlstate: '42601',
     message: 'this form of {what} cannot be read over private tables',
