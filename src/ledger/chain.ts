@@ -1,6 +1,5 @@
-import { createHmac, createSecretKey } from 'node:crypto'
+import { createHmac } from 'node:crypto'
 import type { KeyObject } from 'node:crypto'
-import { check } from '../base/check.ts'
 
 /** One charge as the chain covers it: every column but its own mac. Amounts and `seq` are decimal integer texts, macs are hex. */
 export interface ChainRow {
@@ -19,12 +18,6 @@ export interface ChainRow {
 
 /** What the first row follows. */
 export const genesisMac = '00'.repeat(32)
-
-/** The key of the chain, kept where the database cannot read it; at least 32 bytes. */
-export function chainKey(bytes: Uint8Array): KeyObject {
-  check(bytes.length >= 32, 'the key of the ledger has at least 32 bytes')
-  return createSecretKey(bytes)
-}
 
 /** HMAC-SHA-256 over the row and its predecessor's mac, hex. */
 export function rowMac(key: KeyObject, row: ChainRow): string {

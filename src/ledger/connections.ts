@@ -30,6 +30,16 @@ export class NothingSent extends Error {
   override readonly name = 'NothingSent'
 }
 
+/** Turns a lost connection into NothingSent: for work that may be done twice. */
+export async function orBeginAgain<T>(work: Promise<T>): Promise<T> {
+  try {
+    return await work
+  } catch (error) {
+    if (sqlstateOf(error) === '' || sqlstateOf(error).startsWith('57P')) throw new NothingSent('connection lost', { cause: error })
+    throw error
+  }
+}
+
 export function openConnections(url: string, maxConnections: number, log: Log): Connections {
   const pool = new Pool({
     connectionString: url,

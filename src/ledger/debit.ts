@@ -3,7 +3,7 @@ import type { KeyObject } from 'node:crypto'
 import { check } from '../base/check.ts'
 import type { Account, Charge, DebitOutcome, LedgerNote } from '../budget/ledger.ts'
 import { canonicalJson, headSeal, rowMac } from './chain.ts'
-import { NothingSent, sqlstateOf } from './connections.ts'
+import { orBeginAgain } from './connections.ts'
 import type { Connections, Row, Run } from './connections.ts'
 import { readBalances } from './read.ts'
 import { amountsOf, balanceOf, capsOf, nothing, text } from './rows.ts'
@@ -42,14 +42,9 @@ async function lock(run: Run, { accounts, charge, reserve }: DebitRequest): Prom
   const later = reserve === null ? nothing : amountsOf(reserve)
   const values = [...capsOf(accounts), due.epsilon, due.rho, due.delta, later.epsilon, later.rho, later.delta]
   const debited = 'select account, fits, period, epsilon, rho, delta, rho_ever, delta_ever, head_seq, head_mac, head_seal, at from ledger.debit($1, $2, $3, $4, $5, $6, $7, $8, $9, $10, $11)'
-  try {
-    const [, { rows }] = await Promise.all([run('begin isolation level read committed read write'), run(debited, values)])
-    return rows
-  } catch (error) {
-    // No commit was sent: a connection that had died while it lay idle costs nothing.
-    if (sqlstateOf(error) === '' || sqlstateOf(error).startsWith('57P')) throw new NothingSent()
-    throw error
-  }
+  // No commit was sent: a connection that had died while it lay idle costs nothing.
+  const [, { rows }] = await orBeginAgain(Promise.all([run('begin isolation level read committed read write'), run(debited, values)]))
+  return rows
 }
 
 async function append(run: Run, key: KeyObject, { accounts, charge, note }: DebitRequest, head: Row, periods: readonly string[]): Promise<string> {

@@ -1,8 +1,9 @@
+import { createSecretKey } from 'node:crypto'
 import { Failure } from '../base/failure.ts'
 import type { Log } from '../base/ports.ts'
 import type { Ledger } from '../budget/ledger.ts'
-import { answerMac, chainKey } from './chain.ts'
-import { openConnections } from './connections.ts'
+import { answerMac } from './chain.ts'
+import { openConnections, orBeginAgain } from './connections.ts'
 import { debit } from './debit.ts'
 import { holdDurable, LedgerUnfit, migrate } from './migrate.ts'
 import { readBalances, readCharges } from './read.ts'
@@ -11,6 +12,8 @@ import { verifyChain } from './verify.ts'
 import type { Verdict } from './verify.ts'
 
 const verifyMs = 3_600_000
+const storeSql = 'insert into ledger.answers (id, answer, mac) values ($1, $2, $3) on conflict (id) do nothing'
+const storedSql = `select answer, encode(mac, 'hex') from ledger.answers where id = $1`
 
 export interface LedgerOptions {
   readonly url: string
@@ -31,7 +34,8 @@ export interface OpenLedger extends Ledger {
 
 /** Opens the ledger, making or updating its schema; a LedgerUnfit tells the operator why it cannot be used. */
 export async function openLedger({ url, macKey, log, allowUnsafe = false, maxConnections = 8 }: LedgerOptions): Promise<OpenLedger> {
-  const key = chainKey(macKey)
+  if (macKey.length < 32) throw new LedgerUnfit(`the key of the ledger has ${macKey.length} bytes: give one of at least 32 random bytes`)
+  const key = createSecretKey(macKey)
   const connections = openConnections(url, maxConnections, log)
   try {
     await connections.useAtStart(async (run) => {
@@ -45,14 +49,14 @@ export async function openLedger({ url, macKey, log, allowUnsafe = false, maxCon
   }
   return {
     debit: (accounts, charge, reserve, note) => debit(connections, key, { accounts, charge, reserve, note }),
-    balances: (accounts) => connections.use('balances', (run) => readBalances(run, accounts)),
-    charges: (analyst, dataSet, limit) => connections.use('charges', (run) => readCharges(run, analyst, dataSet, limit)),
+    balances: (accounts) => connections.use('balances', (run) => orBeginAgain(readBalances(run, accounts))),
+    charges: (analyst, dataSet, limit) => connections.use('charges', (run) => orBeginAgain(readCharges(run, analyst, dataSet, limit))),
     store: async (id, answer) => {
       const values = [id, answer, `\\x${answerMac(key, id, answer)}`]
-      await connections.use('store', (run) => run('insert into ledger.answers (id, answer, mac) values ($1, $2, $3) on conflict (id) do nothing', values))
+      await connections.use('store', (run) => orBeginAgain(run(storeSql, values)))
     },
     stored: async (id) => {
-      const { rows } = await connections.use('stored', (run) => run(`select answer, encode(mac, 'hex') from ledger.answers where id = $1`, [id]))
+      const { rows } = await connections.use('stored', (run) => orBeginAgain(run(storedSql, [id])))
       const [answer, mac] = rows[0] ?? []
       if (answer === undefined) return null
       if (mac === answerMac(key, id, text(answer))) return text(answer)

@@ -51,7 +51,7 @@ export async function connectVault(settings: VaultOptions): Promise<Vault> {
     await connections.close()
     throw error
   })
-  for (const warning of standing.warnings) log('warn', warning)
+  for (const warning of standing.warnings) log('warn', 'vault role has more rights than it needs', { warning })
   // A warm connection, so that the first cancel need not log in.
   await connections.cancel('0')
   return {

@@ -43,6 +43,13 @@ describe('the chain', () => {
     expect(await ledger.verify()).toEqual({ kind: 'whole', charges: 5 })
   })
 
+  test('stays whole when the policy changes how an account renews', async () => {
+    const quarterly = account('c/analyst/ana', cap('100', '100', '1', 'quarter'))
+    await ledger.debit([quarterly], charge('1', '0.1', '1e-9'), null, note)
+    await ledger.debit([ana, everyone], charge('1', '0.1', '1e-9'), null, note)
+    expect(await ledger.verify()).toEqual({ kind: 'whole', charges: 7 })
+  })
+
   test.each([
     ['an amount', `update ledger.charges set rho = rho - 1 where seq = 3`],
     ['an epsilon set where there was none', `update ledger.charges set epsilon = 1 where seq = 4`],

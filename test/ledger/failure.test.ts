@@ -78,8 +78,11 @@ describe('a debit whose connection is lost while the commit is on its way', () =
 describe('a lost connection', () => {
   test('that was idle costs nothing: the debit is made on another one', async () => {
     const ana = account('f2', cap('9', '9'))
+    const terminate = `select pg_terminate_backend(pid) from pg_stat_activity where application_name = 'hedgerow ledger' and datname = current_database()`
     await ledger.balances([ana])
-    await sql(url, `select pg_terminate_backend(pid) from pg_stat_activity where application_name = 'hedgerow ledger' and datname = current_database()`)
+    await sql(url, terminate)
+    expect(await ledger.charges('nobody', 'ferries', 1)).toEqual([])
+    await sql(url, terminate)
     expect((await ledger.debit([ana], charge('1', '1'), null, note)).kind).toBe('debited')
     expect((await ledger.balances([ana]))[0]?.epsilonSpent?.toString()).toBe('1')
   })

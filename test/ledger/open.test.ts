@@ -54,6 +54,10 @@ describe('opening the ledger', () => {
     await expect(openLedger({ url, macKey: other, log: () => undefined, allowUnsafe: true })).rejects.toThrow('not sealed with this key')
   })
 
+  test('with a short key is refused', async () => {
+    await expect(openLedger({ url: server.url(), macKey: new Uint8Array(16), log: () => undefined })).rejects.toThrow('the key of the ledger has 16 bytes')
+  })
+
   test('made by a later program is refused', async () => {
     const url = await server.createDatabase('ledger_open')
     await (await open(url)).close()
