@@ -99,9 +99,9 @@ async function installTables(lobby: pg.Client, dataSet: DataSet, plans: readonly
     for (const index of plan.indexes) await lobby.query(index.createOn(plan.schema, plan.name, index.name))
   }
   await addForeignKeys(lobby, plans)
-  for (const plan of fresh) for (const text of closeShellTexts(plan)) await lobby.query(text)
+  for (const plan of fresh) await lobby.query(closeShellTexts(plan).join('; '))
   for (const plan of plans) await grantTable(lobby, plan)
-  for (const table of dataSet.tables.values()) for (const text of commentTexts(dataSet, table)) await lobby.query(text)
+  for (const table of dataSet.tables.values()) await lobby.query(commentTexts(dataSet, table).join('; '))
   await lobby.query("DELETE FROM hedgerow_inside.made WHERE kind <> 'view'")
   for (const plan of plans) await rowsOf(lobby, 'INSERT INTO hedgerow_inside.made VALUES ($1, $2, $3)', [plan.key, plan.kind, plan.signature])
 }
@@ -116,16 +116,13 @@ async function addForeignKeys(lobby: pg.Client, plans: readonly TablePlan[]): Pr
 
 async function grantTable(lobby: pg.Client, plan: TablePlan): Promise<void> {
   const table = qualified(plan.schema, plan.name)
-  await lobby.query(`ALTER TABLE ${table} OWNER TO hedgerow_owner`)
-  await lobby.query(`GRANT SELECT ON ${table} TO hedgerow_analyst, hedgerow_reader`)
+  await lobby.query(`ALTER TABLE ${table} OWNER TO hedgerow_owner; GRANT SELECT ON ${table} TO hedgerow_analyst, hedgerow_reader`)
 }
 
 async function installFunctions(lobby: pg.Client, pull: PullAddress): Promise<void> {
   await installServer(lobby, pull)
   for (const made of lobbyFunctions) {
-    await lobby.query(made.text)
-    await lobby.query(`ALTER FUNCTION ${made.signature} OWNER TO hedgerow_owner`)
-    await lobby.query(`REVOKE ALL ON FUNCTION ${made.signature} FROM PUBLIC`)
+    await lobby.query(`${made.text}; ALTER FUNCTION ${made.signature} OWNER TO hedgerow_owner; REVOKE ALL ON FUNCTION ${made.signature} FROM PUBLIC`)
     if (made.to !== null) await lobby.query(`GRANT EXECUTE ON FUNCTION ${made.signature} TO ${made.to}`)
   }
   const made = new Map(await rowsOf(lobby, 'SELECT key, signature FROM hedgerow_inside.made') as unknown as [string, string][])

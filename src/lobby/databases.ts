@@ -1,8 +1,9 @@
 import type pg from 'pg'
 import type { Policies } from '../policy/data-set.ts'
 import { LobbyProblem } from './problem.ts'
-import { literal, name, names } from './quote.ts'
+import { name, names } from './quote.ts'
 import { rowsOf, sqlstateOf } from './session.ts'
+import { setOn } from './settings-of.ts'
 
 /** Makes the data sets' databases that are missing: UTF8, code-point order. Returns the names of the new ones. */
 export async function createDatabases(client: pg.Client, wanted: readonly string[]): Promise<readonly string[]> {
@@ -46,9 +47,13 @@ async function createDatabase(client: pg.Client, database: string): Promise<void
 export async function closeDatabases(client: pg.Client, policies: Policies, analysts: readonly string[]): Promise<readonly string[]> {
   const others = await otherRoles(client, analysts)
   for (const database of await openDatabases(client)) {
-    const isDataSet = policies.dataSets.has(database)
-    if (!isDataSet && others.length > 0) await client.query(`GRANT CONNECT, TEMPORARY ON DATABASE ${name(database)} TO ${names(others)}`)
-    await client.query(`REVOKE ALL ON DATABASE ${name(database)} FROM PUBLIC`)
+    try {
+      if (!policies.dataSets.has(database) && others.length > 0) await client.query(`GRANT CONNECT, TEMPORARY ON DATABASE ${name(database)} TO ${names(others)}`)
+      await client.query(`REVOKE ALL ON DATABASE ${name(database)} FROM PUBLIC`)
+    } catch (error) {
+      // 3D000: it was dropped in the meantime.
+      if (sqlstateOf(error) !== '3D000') throw error
+    }
   }
   await revokeForeignGrants(client, policies, analysts)
   for (const analyst of policies.analysts.values()) {
@@ -93,32 +98,23 @@ async function revokeForeignGrants(client: pg.Client, policies: Policies, analys
 }
 
 /** Defaults of the hedgerow.* settings and the search path of a data set's database; everything else that was set there is reset. */
-export async function setDatabaseDefaults(client: pg.Client, policies: Policies, warn: (text: string) => void): Promise<void> {
+export async function setDatabaseDefaults(client: pg.Client, policies: Policies, superuser: boolean, warn: (text: string) => void): Promise<void> {
   for (const dataSet of policies.dataSets.values()) {
     const database = name(dataSet.name)
     const path = dataSet.schema === 'public' ? 'public' : `${name(dataSet.schema)}, public`
     await client.query(`ALTER DATABASE ${database} RESET ALL`)
     await client.query(`ALTER DATABASE ${database} SET search_path = ${path}`)
     const defaults: readonly (readonly [string, string])[] = [
-      ['epsilon', dataSet.defaults.epsilon],
-      ['delta', dataSet.defaults.delta],
-      ['margin', ''],
-      ['confidence', '0.95'],
-      ['noise', 'auto'],
-      ['groups', ''],
-      ['rows', ''],
-      ['replay', 'on'],
-      ['nonnegative', 'off'],
+      ['hedgerow.epsilon', dataSet.defaults.epsilon],
+      ['hedgerow.delta', dataSet.defaults.delta],
+      ['hedgerow.margin', ''],
+      ['hedgerow.confidence', '0.95'],
+      ['hedgerow.noise', 'auto'],
+      ['hedgerow.groups', ''],
+      ['hedgerow.rows', ''],
+      ['hedgerow.replay', 'on'],
+      ['hedgerow.nonnegative', 'off'],
     ]
-    for (const [setting, value] of defaults) {
-      await client.query('SAVEPOINT one_setting')
-      try {
-        await client.query(`ALTER DATABASE ${database} SET hedgerow.${setting} = ${literal(value)}`)
-      } catch (error) {
-        await client.query('ROLLBACK TO SAVEPOINT one_setting')
-        if (sqlstateOf(error) !== '42501') throw error
-        warn(`SHOW hedgerow.${setting} has no default in ${dataSet.name}: grant SET ON PARAMETER hedgerow.${setting} to the lobby's role`)
-      }
-    }
+    await setOn(client, `DATABASE ${database}`, defaults, superuser, warn)
   }
 }

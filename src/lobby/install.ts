@@ -59,7 +59,7 @@ async function install(order: LobbyOrder): Promise<LobbyReport> {
     const created = await createDatabases(main, [...policies.dataSets.keys()])
     await withWatcher(order.lobbyUrl, main, known.analysts, noteEnded, async () => {
       for (const open of await closeDatabases(main, policies, known.analysts)) warn(open)
-      await inTransaction(main, 'BEGIN', () => setDatabaseDefaults(main, policies, warn))
+      await inTransaction(main, 'BEGIN', () => setDatabaseDefaults(main, policies, superuser, warn))
     })
     const tables = new Map<string, readonly string[]>()
     for (const dataSet of policies.dataSets.values()) tables.set(dataSet.name, await installOne(order, dataSet.name, known, superuser, warn, noteEnded))

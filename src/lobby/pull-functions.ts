@@ -26,6 +26,7 @@ DECLARE
   request text;
   reply jsonb;
   pause float8 := 0.0005;
+  looks int8 := 0;
 BEGIN
   request := jsonb_build_object(
     'kind', kind,
@@ -52,6 +53,9 @@ BEGIN
     END IF;
     IF hedgerow_inside.dblink_send_query(line, 'pull ' || request) = 1 THEN
       WHILE hedgerow_inside.dblink_is_busy(line) = 1 LOOP
+        looks := looks + 1;
+        -- Each look takes in one buffer of a long reply: several looks between two pauses, or the pauses would add up.
+        CONTINUE WHEN looks % 32 <> 0;
         PERFORM pg_sleep(pause);
         pause := least(pause * 1.3, 0.02);
       END LOOP;

@@ -2,7 +2,8 @@ import type pg from 'pg'
 import type { Policies } from '../policy/data-set.ts'
 import { LobbyProblem } from './problem.ts'
 import { literal, name } from './quote.ts'
-import { rowsOf, sqlstateOf } from './session.ts'
+import { rowsOf } from './session.ts'
+import { setOn } from './settings-of.ts'
 
 /** What an analyst's sessions may use of the lobby. Times and sizes as PostgreSQL writes them: '5min', '1GB'. */
 export interface AnalystLimits {
@@ -59,7 +60,7 @@ export async function installAnalysts(client: pg.Client, policies: Policies, kno
     const login = analyst.login === null ? 'NOLOGIN PASSWORD NULL' : `LOGIN PASSWORD ${literal(analyst.login)}`
     const attributes = `INHERIT NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}CONNECTION LIMIT ${limits.connections} VALID UNTIL 'infinity'`
     await client.query(`ALTER ROLE ${name(analyst.name)} ${attributes} ${login}`)
-    await putBackSettings(client, analyst.name, limits, warn)
+    await putBackSettings(client, analyst.name, limits, superuser, warn)
   }
 }
 
@@ -88,7 +89,7 @@ async function revokeMemberships(client: pg.Client, role: string): Promise<void>
   for (const [group, member] of rows) await client.query(`REVOKE ${name(group ?? '')} FROM ${name(member ?? '')}`)
 }
 
-async function putBackSettings(client: pg.Client, role: string, limits: AnalystLimits, warn: (text: string) => void): Promise<void> {
+async function putBackSettings(client: pg.Client, role: string, limits: AnalystLimits, superuser: boolean, warn: (text: string) => void): Promise<void> {
   await client.query(`ALTER ROLE ${name(role)} RESET ALL`)
   const rows = await rowsOf(
     client,
@@ -97,17 +98,7 @@ async function putBackSettings(client: pg.Client, role: string, limits: AnalystL
     [role],
   )
   for (const [database] of rows) await client.query(`ALTER ROLE ${name(role)} IN DATABASE ${name(database ?? '')} RESET ALL`)
-  for (const [setting, value] of Object.entries(roleSettings(limits))) {
-    await client.query('SAVEPOINT one_setting')
-    try {
-      await client.query(`ALTER ROLE ${name(role)} SET ${setting} = ${literal(value)}`)
-      await client.query('RELEASE SAVEPOINT one_setting')
-    } catch (error) {
-      await client.query('ROLLBACK TO SAVEPOINT one_setting')
-      if (sqlstateOf(error) !== '42501') throw error
-      warn(`${setting} is not set for analysts: grant SET ON PARAMETER ${setting} to the lobby's role`)
-    }
-  }
+  await setOn(client, `ROLE ${name(role)}`, Object.entries(roleSettings(limits)), superuser, warn)
 }
 
 /** The server's log must not keep what analysts write: literals in a statement can be about people, and a DO block can log anything. */
