@@ -1,3 +1,4 @@
+import pg from 'pg'
 import { afterAll, beforeAll, describe, expect, test } from 'vitest'
 import { Fraction } from '../../src/base/fraction.ts'
 import type { OpenLedger } from '../../src/ledger/open.ts'
@@ -28,10 +29,17 @@ describe('a debit', () => {
     const ana = account('k1/analyst/ana', cap('1', '0.5'))
     const everyone = account('k1/everyone', cap('100', '100'))
     await ledger.debit([ana, everyone], charge('0.9', '0.45'), null, note)
+    // The row is held until every connection of both pools stands before it, so that they do race.
+    const holder = new pg.Client({ connectionString: url })
+    await holder.connect()
+    await holder.query('begin; select from ledger.accounts for update')
     const racing = Array.from({ length: 200 }, async (_, n) => {
       const door = n % 2 === 0 ? ledger : other
       return await door.debit(n % 3 === 0 ? [everyone, ana] : [ana, everyone], charge('0.1', '0.05'), null, { ...note, fingerprint: `${n}` })
     })
+    const waiting = `select from pg_stat_activity where application_name = 'hedgerow ledger' and wait_event_type = 'Lock' and datname = current_database()`
+    while ((await sql(url, waiting)).length < 16) await new Promise((resolve) => setTimeout(resolve, 10))
+    await holder.end()
     const outcomes = await Promise.all(racing)
     expect(outcomes.filter(({ kind }) => kind === 'debited')).toHaveLength(1)
     const [balance, all] = await ledger.balances([ana, everyone])
