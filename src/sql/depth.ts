@@ -1,11 +1,11 @@
 /**
  * How deeply `text` nests round and square brackets, those in strings, quoted names and comments aside. It is a cheap look before the parser's stack is
- * at stake; what it misjudges (a backslash in an E'' string) only moves the count, and the tree's own depth is measured after.
+ * at stake; the tree's own depth is measured after.
  */
 export function bracketDepth(text: string): number {
   let depth = 0
   let deepest = 0
-  const pieces = /'[^']*'?|"[^"]*"?|--[^\n]*|\/\*|\$(?:[A-Za-z_\u0080-\uffff][\w\u0080-\uffff]*)?\$|[([)\]]/g
+  const pieces = /(?<![\w$])[eE]'(?:[^'\\]+|\\[^]|'')*'?|'[^']*'?|"[^"]*"?|--[^\n\r]*|\/\*|\$(?:[A-Za-z_\u0080-\uffff][\w\u0080-\uffff]*)?\$|[([)\]]/g
   for (let piece = pieces.exec(text); piece !== null; piece = pieces.exec(text)) {
     const found = piece[0]
     if (found === '(' || found === '[') {

@@ -1,31 +1,43 @@
 import type { Worker } from 'node:worker_threads'
-import { check } from '../base/check.ts'
+import { check, unreachable } from '../base/check.ts'
 import { refuse } from '../base/refusal.ts'
 import { startWorker } from './parse-worker.ts'
 import type { Verdict } from './parse-worker.ts'
 
 /** Parses one text after another in a thread of its own, with a second thread kept warm. */
 export interface ParsePool {
-  /** Refuses with text.too-deep what broke the parser or did not end in time. */
-  parse(text: string): Promise<Verdict & { readonly kind: 'parsed' | 'error' }>
+  /** Refuses with text.too-deep what broke the parser or nests too deeply, with text.too-slow what did not end in time. */
+  parse(text: string): Promise<Extract<Verdict, { readonly kind: 'parsed' | 'error' }>>
   close(): Promise<void>
 }
 
+export interface PoolLimits {
+  /** Longest time for one text, counted from the moment a ready thread is given it. */
+  readonly watchdogMs: number
+  readonly stackSizeMb: number
+  /** Deepest tree that is handed out, in levels of JSON. */
+  readonly levels: number
+}
+
+/** A thread's verdict; 'late' where the watchdog did not wait for it, 'ended' where the thread was not there any more. */
+type Answer = Verdict | { readonly kind: 'late' | 'ended' }
+
 interface Job {
   readonly text: string
-  readonly settle: (verdict: Verdict) => void
+  readonly settle: (answer: Answer) => void
 }
 
 interface Thread {
   readonly worker: Worker
+  /** Resolves when the thread can be asked, or is gone. */
   readonly ready: Promise<void>
 }
 
-/** `watchdogMs` counts from the moment a ready thread is given the text. */
-export function createPool(watchdogMs: number, stackSizeMb: number): ParsePool {
+/** Starts both threads. */
+export function createPool(limits: PoolLimits): ParsePool {
   const waiting: Job[] = []
-  let active = start(stackSizeMb)
-  let spare = start(stackSizeMb)
+  let active = start(limits)
+  let spare = start(limits)
   let busy = false
   let closed = false
 
@@ -33,16 +45,16 @@ export function createPool(watchdogMs: number, stackSizeMb: number): ParsePool {
   function replace(): void {
     void active.worker.terminate()
     active = spare
-    spare = start(stackSizeMb)
+    spare = start(limits)
   }
 
   async function work(): Promise<void> {
     if (busy) return
     busy = true
     for (let job = waiting.shift(); job !== undefined; job = waiting.shift()) {
-      const verdict = closed ? broken : await ask(active, job.text, watchdogMs)
-      if (verdict.kind === 'broken' && !closed) replace()
-      job.settle(verdict)
+      const answer = await ask(active, job.text, limits.watchdogMs)
+      if (!closed && (answer.kind === 'broken' || answer.kind === 'late' || answer.kind === 'ended')) replace()
+      job.settle(answer)
     }
     busy = false
   }
@@ -50,12 +62,23 @@ export function createPool(watchdogMs: number, stackSizeMb: number): ParsePool {
   return {
     async parse(text) {
       check(!closed, 'a closed parser is asked nothing')
-      const verdict = await new Promise<Verdict>((settle) => {
+      const answer = await new Promise<Answer>((settle) => {
         waiting.push({ text, settle })
         void work()
       })
-      if (verdict.kind === 'broken') return refuse('text.too-deep')
-      return verdict
+      switch (answer.kind) {
+        case 'parsed':
+        case 'error':
+          return answer
+        case 'deep':
+        case 'broken':
+          return refuse('text.too-deep')
+        case 'late':
+        case 'ended':
+          return refuse('text.too-slow')
+        default:
+          return unreachable(answer)
+      }
     },
     async close() {
       closed = true
@@ -64,36 +87,38 @@ export function createPool(watchdogMs: number, stackSizeMb: number): ParsePool {
   }
 }
 
-const broken: Verdict = { kind: 'broken' }
-
-function start(stackSizeMb: number): Thread {
-  const worker = startWorker(stackSizeMb)
+/** A thread does not keep the process alive while it has nothing to do. */
+function start(limits: PoolLimits): Thread {
+  const worker = startWorker(limits.stackSizeMb, limits.levels)
   worker.unref()
+  worker.on('error', () => undefined)
   const ready = new Promise<void>((resolve) => {
     worker.once('message', () => resolve())
     worker.once('exit', () => resolve())
   })
-  worker.on('error', () => undefined)
   return { worker, ready }
 }
 
-async function ask(thread: Thread, text: string, watchdogMs: number): Promise<Verdict> {
-  const { worker } = thread
+async function ask({ worker, ready }: Thread, text: string, watchdogMs: number): Promise<Answer> {
   worker.ref()
-  await thread.ready
-  const verdict = await new Promise<Verdict>((resolve) => {
-    const timer = setTimeout(() => settle(broken), watchdogMs)
-    const settle = (value: Verdict): void => {
+  await ready
+  const answer = await new Promise<Answer>((resolve) => {
+    const settle = (found: Answer): void => {
       clearTimeout(timer)
       worker.off('message', settle)
-      worker.off('exit', exited)
-      resolve(value)
+      worker.off('exit', ended)
+      resolve(found)
     }
-    const exited = (): void => settle(broken)
+    const ended = (): void => settle({ kind: 'ended' })
+    const timer = setTimeout(() => settle({ kind: 'late' }), watchdogMs)
     worker.on('message', settle)
-    worker.on('exit', exited)
-    worker.postMessage(text)
+    worker.on('exit', ended)
+    if (worker.threadId === gone) ended()
+    else worker.postMessage(text)
   })
   worker.unref()
-  return verdict
+  return answer
 }
+
+/** The threadId that Node gives a thread after its exit. */
+const gone = -1

@@ -6,7 +6,7 @@ import { createPool } from './parse-pool.ts'
 import { printStatement } from './print.ts'
 import type { Json, RawFields } from './raw.ts'
 import { readStatement } from './read.ts'
-import { survey } from './survey.ts'
+import { relationsOf } from './relations.ts'
 import type { Placed, Statement } from './tree.ts'
 
 /** One statement of a text as the parser gives it; `start` and `length` in bytes of UTF-8. */
@@ -39,7 +39,7 @@ export type ReadOutcome =
   | { readonly kind: 'syntax-error'; readonly message: string; readonly at: number }
 
 export interface Parser {
-  /** PostgreSQL's own tree of each statement. Refuses (text.too-long, text.too-deep, text.unreadable) what is not given to the parser or breaks it. */
+  /** PostgreSQL's own tree of each statement. Refuses (text.too-long, text.too-deep, text.too-slow, text.unreadable) what is not given to the parser or breaks it. */
   parse(text: string): Promise<ParseOutcome>
   /** Our tree of each statement, echo-checked; one statement that cannot be read does not spoil the others. Refuses as `parse` does. */
   readText(text: string): Promise<ReadOutcome>
@@ -61,7 +61,7 @@ const treeCeiling = 1500
 /** Starts two parser threads, one to work and one to take over. Close it to end them; they do not keep the process alive. */
 export function createParser(options: ParserOptions = {}): Parser {
   const { watchdogMs = 2000, ceilingBytes = 65536 } = options
-  const pool = createPool(watchdogMs, 16)
+  const pool = createPool({ watchdogMs, stackSizeMb: 16, levels: treeCeiling })
 
   async function parse(text: string): Promise<ParseOutcome> {
     admit(text, ceilingBytes)
@@ -82,11 +82,10 @@ export function createParser(options: ParserOptions = {}): Parser {
 
   async function read(raw: RawStatement): Promise<ReadStatement> {
     const { start, length, tree } = raw
-    const { depth, relations } = survey(tree)
+    const relations = relationsOf(tree)
     const unread = (refusal: Unread): ReadStatement => {
       return { start, length, relations, statement: { kind: 'other', tag: tagOf(tree) }, refusal }
     }
-    if (depth > treeCeiling) return unread({ code: 'text.too-deep', facts: {}, at: start })
     try {
       const statement = readStatement(tree, start)
       const faithful = statement.kind === 'other' || (await echoes(raw, statement))
