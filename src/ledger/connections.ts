@@ -77,7 +77,7 @@ export function openConnections(url: string, maxConnections: number, log: Log): 
       try {
         return await borrow(work, limitMs).catch(async (error: unknown) => {
           if (!(error instanceof NothingSent)) throw error
-          return await borrow(work, limitMs)
+          return borrow(work, limitMs)
         })
       } catch (error) {
         if (error instanceof BrokenCheck || error instanceof Failure) throw error

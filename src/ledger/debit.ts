@@ -22,7 +22,7 @@ export interface DebitRequest {
 export async function debit(connections: Connections, key: KeyObject, request: DebitRequest): Promise<DebitOutcome> {
   const { accounts } = request
   check(accounts.length > 0 && new Set(accounts.map(({ id }) => id)).size === accounts.length, 'a debit names each of its accounts once')
-  return await connections.use('debit', async (run) => {
+  return connections.use('debit', async (run) => {
     const rows = await lock(run, request)
     const byAccount = new Map(rows.map((row) => [row[0], row]))
     const spent = accounts.find(({ id }) => byAccount.get(id)?.[1] !== 't')
@@ -32,7 +32,13 @@ export async function debit(connections: Connections, key: KeyObject, request: D
     }
     const balances = accounts.map((account) => balanceOf(account, byAccount.get(account.id)?.slice(2) ?? []))
     const head = rows.find((row) => row[0] === null) ?? []
-    const id = await append(run, key, request, head, balances.map(({ period }) => period))
+    const id = await append(
+      run,
+      key,
+      request,
+      head,
+      balances.map(({ period }) => period),
+    )
     return { kind: 'debited', id, balances }
   })
 }
@@ -41,7 +47,8 @@ async function lock(run: Run, { accounts, charge, reserve }: DebitRequest): Prom
   const due = amountsOf(charge)
   const later = reserve === null ? nothing : amountsOf(reserve)
   const values = [...capsOf(accounts), due.epsilon, due.rho, due.delta, later.epsilon, later.rho, later.delta]
-  const debited = 'select account, fits, period, epsilon, rho, delta, rho_ever, delta_ever, head_seq, head_mac, head_seal, at from ledger.debit($1, $2, $3, $4, $5, $6, $7, $8, $9, $10, $11)'
+  const debited =
+    'select account, fits, period, epsilon, rho, delta, rho_ever, delta_ever, head_seq, head_mac, head_seal, at from ledger.debit($1, $2, $3, $4, $5, $6, $7, $8, $9, $10, $11)'
   // No commit was sent: a connection that had died while it lay idle costs nothing.
   const [, { rows }] = await orBeginAgain(Promise.all([run('begin isolation level read committed read write'), run(debited, values)]))
   return rows
@@ -56,7 +63,20 @@ async function append(run: Run, key: KeyObject, { accounts, charge, note }: Debi
   const seq = (BigInt(headSeq) + 1n).toString()
   const row = { seq, id: randomUUID(), at, accounts: accounts.map(({ id }) => id), periods, ...due, note, previousMac }
   const mac = rowMac(key, row)
-  const values = [seq, row.id, at, row.accounts, periods, due.epsilon, due.rho, due.delta, canonicalJson(note), bytes(previousMac), bytes(mac), bytes(headSeal(key, seq, mac))]
+  const values = [
+    seq,
+    row.id,
+    at,
+    row.accounts,
+    periods,
+    due.epsilon,
+    due.rho,
+    due.delta,
+    canonicalJson(note),
+    bytes(previousMac),
+    bytes(mac),
+    bytes(headSeal(key, seq, mac)),
+  ]
   const [, { command }] = await Promise.all([run('select ledger.append($1, $2, $3, $4, $5, $6, $7, $8, $9, $10, $11, $12)', values), run('commit')])
   if (command !== 'COMMIT') throw new Error('the debit was rolled back')
   return row.id

@@ -39,7 +39,9 @@ async function holdKey(run: Run, key: KeyObject): Promise<void> {
   const { rows } = await run(`select seq, encode(mac, 'hex'), encode(seal, 'hex') from ledger.head`)
   const [seq, mac, seal] = rows[0] ?? []
   if (text(seal ?? '') !== headSeal(key, text(seq ?? ''), text(mac ?? ''))) {
-    throw new LedgerUnfit('the end of the ledger is not sealed with this key: give the key it was written with; if this is that key, the ledger was changed by hand')
+    throw new LedgerUnfit(
+      'the end of the ledger is not sealed with this key: give the key it was written with; if this is that key, the ledger was changed by hand',
+    )
   }
 }
 
@@ -50,7 +52,9 @@ export async function holdDurable(run: Run, allowUnsafe: boolean, log: Log): Pro
   if (off.length === 0) return
   const settings = off.join(', ')
   if (!allowUnsafe) {
-    throw new LedgerUnfit(`the ledger's server has ${settings} off, so a crash could forget a debit whose answer was given: set ${settings} = on, or keep the ledger on another server`)
+    throw new LedgerUnfit(
+      `the ledger's server has ${settings} off, so a crash could forget a debit whose answer was given: set ${settings} = on, or keep the ledger on another server`,
+    )
   }
   log('warn', 'ledger is unsafe: a crash can forget debits; for trials only', { off: settings })
 }

@@ -26,5 +26,10 @@ export async function readCharges(run: Run, analyst: string, dataSet: string, li
 }
 
 function entryOf([id, at, epsilon, rho, delta, note]: Row): LedgerEntry {
-  return { id: text(id), at: text(at), charge: chargeOf({ epsilon: epsilon ?? null, rho: text(rho), delta: text(delta) }), note: JSON.parse(text(note)) as LedgerNote }
+  return {
+    id: text(id),
+    at: text(at),
+    charge: chargeOf({ epsilon: epsilon ?? null, rho: text(rho), delta: text(delta) }),
+    note: JSON.parse(text(note)) as LedgerNote,
+  }
 }

@@ -104,11 +104,13 @@ function addRow(sums: Map<string, Sums>, row: Row): void {
 async function faultOfAccounts(run: Run, sums: ReadonlyMap<string, Sums>): Promise<Verdict | null> {
   const { rows } = await run('select id, period, epsilon_spent, rho_spent, delta_spent, rho_ever, delta_ever from ledger.accounts order by id')
   const kept = new Map(rows.map((row) => [text(row[0]), row]))
-  for (const account of kept.keys()) if (!sums.has(account)) return broken('', `account ${account} has no charge: it was put in by hand, or its charges are missing`)
+  for (const account of kept.keys())
+    if (!sums.has(account)) return broken('', `account ${account} has no charge: it was put in by hand, or its charges are missing`)
   for (const [account, sum] of sums) {
     const [, period, epsilon, rho, delta, rhoEver, deltaEver] = kept.get(account) ?? []
     if (period === undefined) return broken('', `account ${account} is missing`)
-    const lowered = BigInt(text(rho)) < sum.rho || BigInt(text(delta)) < sum.delta || (epsilon !== null && (sum.epsilon === null || BigInt(text(epsilon)) < sum.epsilon))
+    const lowered =
+      BigInt(text(rho)) < sum.rho || BigInt(text(delta)) < sum.delta || (epsilon !== null && (sum.epsilon === null || BigInt(text(epsilon)) < sum.epsilon))
     const differs = period !== sum.period || BigInt(text(rhoEver)) !== sum.rhoEver || BigInt(text(deltaEver)) !== sum.deltaEver
     if (lowered || differs) return broken('', `account ${account} was edited: it does not agree with its charges`)
   }
@@ -116,7 +118,7 @@ async function faultOfAccounts(run: Run, sums: ReadonlyMap<string, Sums>): Promi
 }
 
 async function faultOfAnswers(run: Run, key: KeyObject): Promise<Verdict | null> {
-  for (let after = '0'; ; ) {
+  for (let after = '0'; ;) {
     const { rows } = await run(
       `select c.seq, a.id, a.answer, encode(a.mac, 'hex') from ledger.answers a join ledger.charges c using (id) where c.seq > $1 order by c.seq limit 200`,
       [after],

@@ -5,7 +5,12 @@ import type { Log } from '../base/ports.ts'
 export type TextRow = readonly (string | null)[]
 
 /** Every value as the text the server sent. */
-export const asText = { getTypeParser: () => (value: string): string => value }
+export const asText = {
+  getTypeParser:
+    () =>
+    (value: string): string =>
+      value,
+}
 
 /** What holds for every connection to the vault, so that a value prints and a name resolves the same way whatever the role's own settings say. */
 const options = [
@@ -48,7 +53,9 @@ export function openVaultConnections({ url, maxConnections, waitMs, log }: Conne
     cancel: async (pid) => {
       // The second try is for the connection that had died while it lay idle.
       const cancelled = async (): Promise<void> => void (await cancelling.query('select pg_catalog.pg_cancel_backend($1)', [pid]))
-      await cancelled().catch(cancelled).catch(() => log('warn', 'vault query could not be cancelled'))
+      await cancelled()
+        .catch(cancelled)
+        .catch(() => log('warn', 'vault query could not be cancelled'))
     },
     close: async () => void (await Promise.all([asking.end(), cancelling.end()])),
   }

@@ -55,7 +55,7 @@ export function runQuery(connections: VaultConnections, query: VaultQuery, optio
       if (over || !isLost(error)) throw error
       // The connection had died while it lay idle: the vault was restarted, and nothing was asked yet.
       give(false)
-      return await begun()
+      return begun()
     })
     const rows = await readRows(client, query, options)
     if (!over) finish(client)
@@ -95,7 +95,11 @@ async function begin(client: PoolClient, { timeZone, timeoutMs, workMemKb, notic
 }
 
 /** Rows are turned into bigints one by one as they arrive: nothing else of the answer is kept. */
-async function readRows(client: PoolClient, { text, values, keyCount, totalCount }: VaultQuery, { rowCeiling, byteCeiling }: RunOptions): Promise<readonly ExactRow[]> {
+async function readRows(
+  client: PoolClient,
+  { text, values, keyCount, totalCount }: VaultQuery,
+  { rowCeiling, byteCeiling }: RunOptions,
+): Promise<readonly ExactRow[]> {
   const socket = client.connection.stream as Socket
   const bytesBefore = socket.bytesRead
   const rows: ExactRow[] = []
@@ -122,7 +126,7 @@ async function readRows(client: PoolClient, { text, values, keyCount, totalCount
     asked.on('error', (error: unknown) => reject(new Failure(isTimeout(error) ? 'deadline' : 'vault')))
     client.query(asked)
   })
-  return await read.finally(() => clearInterval(watch))
+  return read.finally(() => clearInterval(watch))
 }
 
 function codeOf(error: unknown): string {

@@ -20,7 +20,9 @@ export async function runSession<T>(connections: VaultConnections, timeoutMs: nu
   try {
     await opaque(client.query('begin isolation level repeatable read read only'))
     await opaque(client.query(`select set_config('statement_timeout', $1, true)`, [`${timeoutMs}ms`]))
-    const result = await work({ query: async ({ text, values = [] }) => await opaque(client.query<unknown[]>({ text, values, rowMode: 'array', types: asText })) })
+    const result = await work({
+      query: async ({ text, values = [] }) => opaque(client.query<unknown[]>({ text, values, rowMode: 'array', types: asText })),
+    })
     await opaque(client.query('commit'))
     whole = true
     return result

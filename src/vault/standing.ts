@@ -37,7 +37,9 @@ export async function readStanding(pool: Pool): Promise<Standing> {
     [superuser === 't' ? 'f' : replicates, 'may replicate'],
     [superuser === 't' ? 'f' : files, `may use the server's files or programs`],
   ]
-  const warnings = may.filter(([held]) => held === 't').map(([, right]) => `the vault's role ${role} ${right}: give Hedgerow a role that may only SELECT the listed tables`)
+  const warnings = may
+    .filter(([held]) => held === 't')
+    .map(([, right]) => `the vault's role ${role} ${right}: give Hedgerow a role that may only SELECT the listed tables`)
   if (superuser !== 't' && bypasses === 't') warnings.push(`the vault's role ${role} passes by row security: rows that a policy of the vault hides are counted`)
   const noticesLostClients = await pool.query(`select set_config('client_connection_check_interval', '500ms', false)`).then(
     () => true,

@@ -30,7 +30,7 @@ beforeEach(async () => {
     if (outcome.kind === 'debited') ids.push(outcome.id)
   }
   await ledger.store(ids[1] ?? '', '{"rows":[]}')
-  return async () => await ledger.close()
+  return async () => ledger.close()
 })
 
 /** What someone with every right in the database can do. */
@@ -70,12 +70,16 @@ describe('the chain', () => {
   })
 
   test('shows rows that were taken out and numbered anew', async () => {
-    await tamper('delete from ledger.charges where seq = 3; update ledger.charges set seq = 3 where seq = 4; update ledger.charges set seq = 4 where seq = 5; update ledger.head set seq = 4')
+    await tamper(
+      'delete from ledger.charges where seq = 3; update ledger.charges set seq = 3 where seq = 4; update ledger.charges set seq = 4 where seq = 5; update ledger.head set seq = 4',
+    )
     expect(await ledger.verify()).toMatchObject({ kind: 'broken', seq: '3' })
   })
 
   test('shows two rows that were swapped', async () => {
-    await tamper('update ledger.charges set seq = 99 where seq = 2; update ledger.charges set seq = 2 where seq = 3; update ledger.charges set seq = 3 where seq = 99')
+    await tamper(
+      'update ledger.charges set seq = 99 where seq = 2; update ledger.charges set seq = 2 where seq = 3; update ledger.charges set seq = 3 where seq = 99',
+    )
     expect(await ledger.verify()).toMatchObject({ kind: 'broken', seq: '2' })
   })
 

@@ -35,7 +35,7 @@ describe('a debit', () => {
     await holder.query('begin; select from ledger.accounts for update')
     const racing = Array.from({ length: 200 }, async (_, n) => {
       const door = n % 2 === 0 ? ledger : other
-      return await door.debit(n % 3 === 0 ? [everyone, ana] : [ana, everyone], charge('0.1', '0.05'), null, { ...note, fingerprint: `${n}` })
+      return door.debit(n % 3 === 0 ? [everyone, ana] : [ana, everyone], charge('0.1', '0.05'), null, { ...note, fingerprint: `${n}` })
     })
     const waiting = `select from pg_stat_activity where application_name = 'hedgerow ledger' and wait_event_type = 'Lock' and datname = current_database()`
     while ((await sql(url, waiting)).length < 16) await new Promise((resolve) => setTimeout(resolve, 10))
@@ -119,7 +119,9 @@ describe('a debit', () => {
 
   test('over the same two accounts in either order never deadlocks', async () => {
     const pair = [account('k9/a', cap('1e9', '1e9')), account('k9/b', cap('1e9', '1e9'))]
-    const outcomes = await Promise.all(Array.from({ length: 60 }, async (_, n) => await (n % 2 ? ledger : other).debit(n % 4 < 2 ? pair : pair.toReversed(), charge('1', '1'), null, note)))
+    const outcomes = await Promise.all(
+      Array.from({ length: 60 }, async (_, n) => (n % 2 ? ledger : other).debit(n % 4 < 2 ? pair : pair.toReversed(), charge('1', '1'), null, note)),
+    )
     expect(outcomes.every(({ kind }) => kind === 'debited')).toBe(true)
     const [balance] = await ledger.balances(pair)
     expect(balance?.epsilonSpent?.toString()).toBe('60')

@@ -67,7 +67,10 @@ describe('a debit whose connection is lost while the commit is on its way', () =
     const cut = await open(relay.url, 1)
     relay.cutAt('commit\0', sentOn)
     await expect(cut.debit([ana], charge('1', '1'), null, note)).rejects.toMatchObject({ code: 'ledger' })
-    await waitFor(async () => (await sql(url, `select from pg_locks l join pg_class c on c.oid = l.relation where c.relname = 'head' and l.mode = 'RowExclusiveLock'`)).length === 0)
+    await waitFor(
+      async () =>
+        (await sql(url, `select from pg_locks l join pg_class c on c.oid = l.relation where c.relname = 'head' and l.mode = 'RowExclusiveLock'`)).length === 0,
+    )
     expect((await ledger.balances([ana]))[0]?.epsilonSpent?.toString()).toBe(spent)
     expect((await ledger.verify()).kind).toBe('whole')
     await cut.close()
@@ -93,7 +96,9 @@ describe('a lost connection', () => {
     await holder.connect()
     await holder.query('begin')
     await holder.query('select from ledger.head for update')
-    const waiting = async (): Promise<boolean> => (await sql(url, `select from pg_stat_activity where application_name = 'hedgerow ledger' and wait_event_type = 'Lock' and datname = current_database()`)).length > 0
+    const waiting = async (): Promise<boolean> =>
+      (await sql(url, `select from pg_stat_activity where application_name = 'hedgerow ledger' and wait_event_type = 'Lock' and datname = current_database()`))
+        .length > 0
     const kill = `select pg_terminate_backend(pid) from pg_stat_activity where application_name = 'hedgerow ledger' and wait_event_type = 'Lock' and datname = current_database()`
     const first = ledger.debit([ana], charge('1', '1'), null, note)
     await waitFor(waiting)

@@ -28,7 +28,7 @@ export function recorder(): { readonly log: Log; readonly events: Event[] } {
 }
 
 export async function open(url: string, maxConnections = 8, log: Log = () => undefined): Promise<OpenLedger> {
-  return await openLedger({ url, macKey, log, allowUnsafe: true, maxConnections })
+  return openLedger({ url, macKey, log, allowUnsafe: true, maxConnections })
 }
 
 export function cap(epsilon: string, rhoCap: string, deltaPot = '0', renews: AccountCap['renews'] = 'never'): AccountCap {

@@ -17,9 +17,9 @@ afterAll(async () => {
 describe('opening the ledger', () => {
   test('from several programs at once makes its schema once, and again changes nothing', async () => {
     const url = await server.createDatabase('ledger_open')
-    const ledgers = await Promise.all([1, 2, 3, 4].map(async () => await open(url, 1)))
+    const ledgers = await Promise.all([1, 2, 3, 4].map(async () => open(url, 1)))
     await ledgers[0]?.debit([account('o', cap('9', '9'))], charge('1', '1'), null, note)
-    await Promise.all(ledgers.map(async (ledger) => await ledger.close()))
+    await Promise.all(ledgers.map(async (ledger) => ledger.close()))
     const again = await open(url)
     expect(await again.verify()).toEqual({ kind: 'whole', charges: 1 })
     await again.close()
@@ -31,8 +31,11 @@ describe('opening the ledger', () => {
     const [row] = await sql(url, `select current_setting('fsync') as fsync`)
     const { log, events } = recorder()
     const strict = await openLedger({ url, macKey, log }).catch((error: unknown) => error)
-    if (row?.['fsync'] === 'on') return await (strict as { close(): Promise<void> }).close()
-    expect(strict).toMatchObject({ name: 'LedgerUnfit', message: expect.stringMatching(/^the ledger's server has fsync.* off, so a crash could forget a debit/) })
+    if (row?.['fsync'] === 'on') return (strict as { close(): Promise<void> }).close()
+    expect(strict).toMatchObject({
+      name: 'LedgerUnfit',
+      message: expect.stringMatching(/^the ledger's server has fsync.* off, so a crash could forget a debit/),
+    })
     const ledger = await open(url, 1, log)
     expect(events).toMatchObject([{ level: 'warn', event: expect.stringContaining('ledger is unsafe'), fields: { off: expect.stringContaining('fsync') } }])
     await ledger.close()

@@ -24,22 +24,22 @@ afterAll(async () => {
 
 /** Few distinct sizes in the meters' own units, so that sums often meet a cap exactly. */
 const size = fc.integer({ min: 0, max: 6 })
-const charges = fc.record({ epsilon: fc.option(size, { freq: 4 }), rho: size, delta: fc.integer({ min: 0, max: 2 }) }).map(
-  ({ epsilon, rho, delta }): Charge => ({
+const charges = fc
+  .record({ epsilon: fc.option(size, { freq: 4 }), rho: size, delta: fc.integer({ min: 0, max: 2 }) })
+  .map(({ epsilon, rho, delta }): Charge => ({
     epsilon: epsilon === null ? null : Fraction.make(BigInt(epsilon), 10n ** 12n),
     rho: Fraction.make(BigInt(rho), 10n ** 15n),
     delta: Fraction.make(BigInt(delta), 10n ** 20n),
-  }),
-)
-const caps = fc.record({ epsilon: fc.integer({ min: 1, max: 14 }), rho: fc.integer({ min: 0, max: 14 }), pot: fc.integer({ min: 0, max: 4 }) }).map(
-  ({ epsilon, rho, pot }): AccountCap => ({
+  }))
+const caps = fc
+  .record({ epsilon: fc.integer({ min: 1, max: 14 }), rho: fc.integer({ min: 0, max: 14 }), pot: fc.integer({ min: 0, max: 4 }) })
+  .map(({ epsilon, rho, pot }): AccountCap => ({
     epsilon: Fraction.make(BigInt(epsilon), 10n ** 12n),
     delta: Fraction.parse('1e-6'),
     deltaPot: Fraction.make(BigInt(pot), 10n ** 20n),
     rhoCap: Fraction.make(BigInt(rho), 10n ** 15n),
     renews: 'never',
-  }),
-)
+  }))
 
 test('the rule in SQL decides as the rule in the program does, step by step, with and without a reserve', async () => {
   let run = 0

@@ -32,7 +32,13 @@ describe('a renewed budget', () => {
     const outcome = await ledger.debit([monthly], charge('0.25', '0.5'), null, note)
     const now = new Date().toISOString().slice(0, 7)
     const [balance] = outcome.balances
-    expect([outcome.kind, balance?.period, balance?.epsilonSpent?.toString(), balance?.rhoSpent.toString(), balance?.rhoEver.toString()]).toEqual(['debited', now, '1/4', '1/2', '3/2'])
+    expect([outcome.kind, balance?.period, balance?.epsilonSpent?.toString(), balance?.rhoSpent.toString(), balance?.rhoEver.toString()]).toEqual([
+      'debited',
+      now,
+      '1/4',
+      '1/2',
+      '3/2',
+    ])
   })
 
   test('is not renewed a second time when the clock is set back', async () => {
@@ -80,7 +86,10 @@ describe('a renewed budget', () => {
   })
 
   test('turns at midnight in UTC, wherever the server stands', async () => {
-    const [row] = await sql(url, `select ledger.period_at('year', '2026-12-31 23:59:59.9+00') as old, ledger.period_at('quarter', '2027-01-01 00:00+00') as new from set_config('timezone', 'Pacific/Kiritimati', false)`)
+    const [row] = await sql(
+      url,
+      `select ledger.period_at('year', '2026-12-31 23:59:59.9+00') as old, ledger.period_at('quarter', '2027-01-01 00:00+00') as new from set_config('timezone', 'Pacific/Kiritimati', false)`,
+    )
     expect(row).toEqual({ old: '2026', new: '2027-Q1' })
   })
 })

@@ -50,9 +50,12 @@ describe('a row of the vault', () => {
     expect(exactRow([big], 0, 1).values[0]?.toString()).toBe(big)
   })
 
-  test.each([['1.5'], ['1e3'], ['NaN'], ['Infinity'], [''], [' 1'], ['0x10'], [null]])('with the total %s is our mistake, and the message does not quote it', (total) => {
-    expect(() => exactRow(['key', total], 1, 1)).toThrow(/^a total of the vault is an integer$/)
-  })
+  test.each([['1.5'], ['1e3'], ['NaN'], ['Infinity'], [''], [' 1'], ['0x10'], [null]])(
+    'with the total %s is our mistake, and the message does not quote it',
+    (total) => {
+      expect(() => exactRow(['key', total], 1, 1)).toThrow(/^a total of the vault is an integer$/)
+    },
+  )
 
   test('with a column too many or too few is our mistake', () => {
     expect(() => exactRow(['1', '2'], 0, 1)).toThrow('keys and its totals')

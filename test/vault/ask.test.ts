@@ -45,7 +45,7 @@ beforeEach(async () => {
   vault = await connectVault({ url: reader, statementTimeoutMs: 20_000, maxConnections: 2, log, rowCeiling: 50_000, byteCeiling: 6_000_000 })
 })
 
-afterEach(async () => await vault.close())
+afterEach(async () => vault.close())
 
 async function sql(text: string): Promise<Record<string, unknown>[]> {
   return (await watcher.query<Record<string, unknown>>(text)).rows
@@ -80,7 +80,13 @@ async function until(held: () => Promise<boolean>, limitMs: number): Promise<num
 describe('asking the vault', () => {
   test('gives keys as text and totals to the last digit, with the values bound', async () => {
     const big = '9'.repeat(60)
-    const table = await vault.ask(query(`select district, null::text, count(*), -($1::numeric) from public.riders where name <> $2 group by district`, 2, 2, [big, `x'; drop table riders --`]), options())
+    const table = await vault.ask(
+      query(`select district, null::text, count(*), -($1::numeric) from public.riders where name <> $2 group by district`, 2, 2, [
+        big,
+        `x'; drop table riders --`,
+      ]),
+      options(),
+    )
     expect(rowsOf(table)).toEqual([{ keys: ['Northbank', null], values: [100n, -BigInt(big)] }])
   })
 
@@ -91,9 +97,14 @@ describe('asking the vault', () => {
   })
 
   test('prints dates, intervals and floats one way, whatever the role has set', async () => {
-    await sql(`alter role ${role} set datestyle = 'German'; alter role ${role} set intervalstyle = 'iso_8601'; alter role ${role} set extra_float_digits = -10; alter role ${role} set search_path = public; alter role ${role} set default_transaction_read_only = off`)
+    await sql(
+      `alter role ${role} set datestyle = 'German'; alter role ${role} set intervalstyle = 'iso_8601'; alter role ${role} set extra_float_digits = -10; alter role ${role} set search_path = public; alter role ${role} set default_transaction_read_only = off`,
+    )
     const own = await connectVault({ url: reader, statementTimeoutMs: 5_000, maxConnections: 1, log })
-    const table = await own.ask(query(`select date '2026-12-01', interval '1 day 2 hours', 0.1::float8 + 0.2::float8, current_schemas(false)::text, 1`, 4, 1), options())
+    const table = await own.ask(
+      query(`select date '2026-12-01', interval '1 day 2 hours', 0.1::float8 + 0.2::float8, current_schemas(false)::text, 1`, 4, 1),
+      options(),
+    )
     expect(rowsOf(table)[0]?.keys).toEqual(['2026-12-01', '1 day 02:00:00', '0.30000000000000004', '{pg_catalog}'])
     await own.close()
     await sql(`alter role ${role} reset all`)
@@ -121,7 +132,9 @@ describe('an error of the vault', () => {
     expect(failure).toMatchObject({ name: 'Failure', code: 'vault' })
     const { reference } = failure as { reference: string }
     expect(logged).toEqual([['error', 'vault query failed', { reference }]])
-    expect(`${String(failure)} ${JSON.stringify(failure)} ${(failure as Error).stack} ${JSON.stringify(logged)}`).not.toMatch(/zero|Rider|integer|invalid|secret_piers|22\w{3}|42\w{3}/)
+    expect(`${String(failure)} ${JSON.stringify(failure)} ${(failure as Error).stack} ${JSON.stringify(logged)}`).not.toMatch(
+      /zero|Rider|integer|invalid|secret_piers|22\w{3}|42\w{3}/,
+    )
     expect((failure as Error).cause).toBeUndefined()
     expect(rowsOf(await vault.ask(query('select 1', 0, 1), options()))).toEqual([{ keys: [], values: [1n] }])
   })
@@ -153,7 +166,9 @@ describe('stopping', () => {
 
   test('a query that only computes is stopped as well', async () => {
     const stop = new AbortController()
-    const asked = vault.ask(query(`select sum(a) /* busy-one */ from generate_series(1, 2000000000) a`, 0, 1), options({ signal: stop.signal })).catch((error: unknown) => error)
+    const asked = vault
+      .ask(query(`select sum(a) /* busy-one */ from generate_series(1, 2000000000) a`, 0, 1), options({ signal: stop.signal }))
+      .catch((error: unknown) => error)
     await until(async () => (await running('busy-one')) === 1, 5_000)
     stop.abort()
     await asked
@@ -169,7 +184,7 @@ describe('stopping', () => {
 
   test('the deadline holds while every connection is taken, and those come back', async () => {
     const stop = new AbortController()
-    const held = [1, 2].map(async () => await vault.ask(query('select 1 from pg_sleep(30)', 0, 1), options({ signal: stop.signal })).catch(() => 'stopped'))
+    const held = [1, 2].map(async () => vault.ask(query('select 1 from pg_sleep(30)', 0, 1), options({ signal: stop.signal })).catch(() => 'stopped'))
     await expect(vault.ask(query('select 1', 0, 1), options({ deadlineMs: 100 }))).rejects.toMatchObject({ code: 'deadline' })
     const waiting = new AbortController()
     const third = vault.ask(query('select 1', 0, 1), options({ signal: waiting.signal })).catch((error: unknown) => error)
@@ -177,7 +192,9 @@ describe('stopping', () => {
     expect(await third).toMatchObject({ message: 'no longer wanted' })
     stop.abort()
     expect(await Promise.all(held)).toEqual(['stopped', 'stopped'])
-    const after = await Promise.all(Array.from({ length: 20 }, async (_, n) => rowsOf(await vault.ask(query('select $1::int', 0, 1, [`${n}`]), options()))[0]?.values[0]))
+    const after = await Promise.all(
+      Array.from({ length: 20 }, async (_, n) => rowsOf(await vault.ask(query('select $1::int', 0, 1, [`${n}`]), options()))[0]?.values[0]),
+    )
     expect(after).toEqual(Array.from({ length: 20 }, (_, n) => BigInt(n)))
   })
 
@@ -230,11 +247,15 @@ describe('connecting', () => {
     await sql(`revoke update on public.riders from ${role}; alter role ${role} nocreatedb nobypassrls`)
   })
 
-  test('that cannot be done says why, without the server\'s own text', async () => {
+  test("that cannot be done says why, without the server's own text", async () => {
     const wrong = new URL(reader)
     wrong.pathname = '/no_such_harbour'
-    await expect(connectVault({ url: wrong.href, statementTimeoutMs: 5_000, maxConnections: 1, log })).rejects.toThrow('the vault cannot be reached: there is no database of that name')
-    await expect(connectVault({ url: 'postgresql://x@127.0.0.1:1/x', statementTimeoutMs: 5_000, maxConnections: 1, log })).rejects.toThrow('nothing listens at that host and port')
+    await expect(connectVault({ url: wrong.href, statementTimeoutMs: 5_000, maxConnections: 1, log })).rejects.toThrow(
+      'the vault cannot be reached: there is no database of that name',
+    )
+    await expect(connectVault({ url: 'postgresql://x@127.0.0.1:1/x', statementTimeoutMs: 5_000, maxConnections: 1, log })).rejects.toThrow(
+      'nothing listens at that host and port',
+    )
   })
 
   test('lasts when the vault drops every connection', async () => {
@@ -258,10 +279,14 @@ describe('connecting', () => {
 })
 
 describe('a session for the catalogue', () => {
-  test('reads in a read-only snapshot and hides the server\'s errors', async () => {
-    const rows = await vault.session(async (client) => (await client.query({ text: `select relname from pg_class where oid = 'public.riders'::regclass`, rowMode: 'array' })).rows)
+  test("reads in a read-only snapshot and hides the server's errors", async () => {
+    const rows = await vault.session(
+      async (client) => (await client.query({ text: `select relname from pg_class where oid = 'public.riders'::regclass`, rowMode: 'array' })).rows,
+    )
     expect(rows).toEqual([['riders']])
-    await expect(vault.session(async (client) => await client.query({ text: 'create table public.t ()', rowMode: 'array' }))).rejects.toMatchObject({ code: 'vault' })
+    await expect(vault.session(async (client) => client.query({ text: 'create table public.t ()', rowMode: 'array' }))).rejects.toMatchObject({
+      code: 'vault',
+    })
     await expect(vault.session(() => Promise.reject(new Error('the vault must be newer')))).rejects.toThrow('the vault must be newer')
   })
 })
