@@ -14,11 +14,31 @@ export interface SettingRow {
 
 /** Every setting. The README and docker-compose.yml name the same ones; tests hold them to this table. */
 export const settingRows = [
-  { name: 'HEDGEROW_VAULT_URL', kind: 'url', default: null, meaning: "the vault: the database with people's rows, through a read-only role; needed to serve and to check" },
-  { name: 'HEDGEROW_LOBBY_URL', kind: 'url', default: null, meaning: 'the lobby, through a role that may make roles and databases; unset: the embedded server in HEDGEROW_STATE' },
-  { name: 'HEDGEROW_LEDGER_URL', kind: 'url', default: null, meaning: "the ledger's database; unset: one of its own in the lobby's server; another server is better" },
+  {
+    name: 'HEDGEROW_VAULT_URL',
+    kind: 'url',
+    default: null,
+    meaning: "the vault: the database with people's rows, through a read-only role; needed to serve and to check",
+  },
+  {
+    name: 'HEDGEROW_LOBBY_URL',
+    kind: 'url',
+    default: null,
+    meaning: 'the lobby, through a role that may make roles and databases; unset: the embedded server in HEDGEROW_STATE',
+  },
+  {
+    name: 'HEDGEROW_LEDGER_URL',
+    kind: 'url',
+    default: null,
+    meaning: "the ledger's database; unset: one of its own in the lobby's server; another server is better",
+  },
   { name: 'HEDGEROW_POLICIES', kind: 'path', default: 'policies/', meaning: 'the directory of the policy files' },
-  { name: 'HEDGEROW_STATE', kind: 'path', default: '.hedgerow/', meaning: 'the directory of what Hedgerow itself keeps: the embedded server; on a disk that is backed up' },
+  {
+    name: 'HEDGEROW_STATE',
+    kind: 'path',
+    default: '.hedgerow/',
+    meaning: 'the directory of what Hedgerow itself keeps: the embedded server; on a disk that is backed up',
+  },
   { name: 'HEDGEROW_HOST', kind: 'host', default: '127.0.0.1', meaning: 'the address analysts connect to' },
   { name: 'HEDGEROW_PORT', kind: 'port', default: '7432', meaning: 'the port analysts connect to; 0: any free one' },
   { name: 'HEDGEROW_PULL_HOST', kind: 'host', default: '127.0.0.1', meaning: 'the address under which the lobby reaches Hedgerow' },
@@ -112,7 +132,7 @@ function wrong(kind: Kind, value: string): string | null {
     case 'host':
       return /^[\w.:-]+$/.test(value) ? null : 'expected a host name or an address without a port, like 127.0.0.1 or ::'
     case 'port':
-      return (/^\d{1,5}$/.test(value) && Number(value) <= 65_535) ? null : 'expected a port between 1 and 65535, or 0 for any free one'
+      return /^\d{1,5}$/.test(value) && Number(value) <= 65_535 ? null : 'expected a port between 1 and 65535, or 0 for any free one'
     case 'duration':
       return (milliseconds(value) ?? 0) > 0 ? null : 'expected a length of time like 500ms, 30s or 2min, at most 24 h'
     default:

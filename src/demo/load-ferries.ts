@@ -44,7 +44,9 @@ export async function loadFerries(url: string, progress: LoadProgress = () => un
 }
 
 async function fillPiers(client: pg.Client): Promise<void> {
-  await client.query('INSERT INTO public.piers SELECT * FROM jsonb_to_recordset($1) AS p(pier_id integer, name text, zone integer, opened date)', [JSON.stringify(piers)])
+  await client.query('INSERT INTO public.piers SELECT * FROM jsonb_to_recordset($1) AS p(pier_id integer, name text, zone integer, opened date)', [
+    JSON.stringify(piers),
+  ])
 }
 
 /** A number in [0, 1) that depends on `key` and `stream` alone: PostgreSQL's seeded 64-bit hash, its upper 31 usable bits. */

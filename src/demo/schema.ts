@@ -47,7 +47,19 @@ export const ferryConstraints: readonly string[] = [
 export const districts = ['Northbank', 'Eastquay', 'Saltmarsh', 'Gullhaven', 'Old Weir', 'Tidemill'] as const
 
 /** What complaints are about: the later, the rarer; the last are too rare for an answer to name them. */
-export const topics = ['delay', 'crowding', 'fares', 'cleanliness', 'access', 'lost property', 'signage', 'engine noise', 'gulls', 'left behind', 'ghost on deck'] as const
+export const topics = [
+  'delay',
+  'crowding',
+  'fares',
+  'cleanliness',
+  'access',
+  'lost property',
+  'signage',
+  'engine noise',
+  'gulls',
+  'left behind',
+  'ghost on deck',
+] as const
 
 /** A pier as published by the company. The last one opened after the last trip: its group is empty, and answers show it all the same. */
 export interface Pier {

@@ -42,14 +42,26 @@ async function missingLinks(native: string): Promise<readonly Link[]> {
     at: join('lib', basename(target)),
     to: basename(source),
   }))
-  const there = await Promise.all(links.map(({ at }) => lstat(join(native, at)).then(() => true, () => false)))
+  const there = await Promise.all(
+    links.map(({ at }) =>
+      lstat(join(native, at)).then(
+        () => true,
+        () => false,
+      ),
+    ),
+  )
   return links.filter((_, index) => there[index] !== true)
 }
 
 /** True if every link is there afterwards; another start may make the same ones at the same time. */
 async function linked(native: string, links: readonly Link[]): Promise<boolean> {
   const made = await Promise.all(
-    links.map(({ at, to }) => symlink(to, join(native, at)).then(() => true, (error: NodeJS.ErrnoException) => error.code === 'EEXIST')),
+    links.map(({ at, to }) =>
+      symlink(to, join(native, at)).then(
+        () => true,
+        (error: NodeJS.ErrnoException) => error.code === 'EEXIST',
+      ),
+    ),
   )
   return made.every(Boolean)
 }
@@ -112,7 +124,14 @@ async function wholeCopy(native: string, target: string): Promise<boolean> {
       return from?.size === to?.size
     }),
   )
-  return same.every(Boolean) && (await access(target, constants.X_OK).then(() => true, () => false)) && (await missingLinks(target)).length === 0
+  return (
+    same.every(Boolean) &&
+    (await access(target, constants.X_OK).then(
+      () => true,
+      () => false,
+    )) &&
+    (await missingLinks(target)).length === 0
+  )
 }
 
 async function cacheDirectory(account: ServerAccount | undefined): Promise<string> {

@@ -27,8 +27,16 @@ export async function superuserPassword(file: string, dataDirectory: string): Pr
     throw error
   })
   if (kept !== '') return kept.trim()
-  if (await stat(dataDirectory).then(() => true, () => false)) {
-    throw new EmbeddedServerError(`the password file ${file} of the data in ${dataDirectory} is gone`, 'put it back from a backup, or remove the state directory and with it every account of it')
+  if (
+    await stat(dataDirectory).then(
+      () => true,
+      () => false,
+    )
+  ) {
+    throw new EmbeddedServerError(
+      `the password file ${file} of the data in ${dataDirectory} is gone`,
+      'put it back from a backup, or remove the state directory and with it every account of it',
+    )
   }
   const password = randomBytes(24).toString('base64url')
   await writeDurably(file, `${password}\n`)
@@ -51,7 +59,13 @@ async function writeDurably(file: string, text: string): Promise<void> {
  * Makes the data directory where there is none, for SCRAM log-ins only. It appears under its name when it is complete: what a killed start left behind is made anew. With `durable`
  * it is on disk before anything is written to it.
  */
-export async function makeDataDirectory(native: string, dataDirectory: string, password: string, account: ServerAccount | undefined, durable: boolean): Promise<void> {
+export async function makeDataDirectory(
+  native: string,
+  dataDirectory: string,
+  password: string,
+  account: ServerAccount | undefined,
+  durable: boolean,
+): Promise<void> {
   const version = await readFile(join(dataDirectory, 'PG_VERSION'), 'utf8').catch(() => undefined)
   if (version !== undefined) return await checkVersion(native, dataDirectory, version.trim())
   const fresh = `${dataDirectory}.new`
@@ -100,7 +114,12 @@ async function runInitdb(native: string, directory: string, account: ServerAccou
     ...['-D', nameFromInside(directory), '-U', superuser, '--auth=scram-sha-256', '--pwfile=/dev/fd/3', '--encoding=UTF8'],
     ...['--locale-provider=builtin', '--builtin-locale=C.UTF-8', '--locale=C', ...(durable ? [] : ['--no-sync'])],
   ]
-  const child = spawn(join(native, 'bin', 'initdb'), options, { cwd: directory, env: serverEnvironment, ...account, stdio: ['ignore', 'ignore', 'pipe', passwordFd] })
+  const child = spawn(join(native, 'bin', 'initdb'), options, {
+    cwd: directory,
+    env: serverEnvironment,
+    ...account,
+    stdio: ['ignore', 'ignore', 'pipe', passwordFd],
+  })
   const said: Buffer[] = []
   child.stderr?.on('data', (part: Buffer) => said.push(part))
   const code = await new Promise<number | null>((resolve, reject) => {
@@ -108,5 +127,8 @@ async function runInitdb(native: string, directory: string, account: ServerAccou
     child.once('close', resolve)
   })
   if (code === 0) return
-  throw new EmbeddedServerError(`PostgreSQL's initdb failed in ${directory}`, Buffer.concat(said).toString('utf8').trim() || `it ended with code ${String(code)}`)
+  throw new EmbeddedServerError(
+    `PostgreSQL's initdb failed in ${directory}`,
+    Buffer.concat(said).toString('utf8').trim() || `it ended with code ${String(code)}`,
+  )
 }

@@ -29,7 +29,13 @@ done
  * It leads a session of its own, so that a Ctrl-C meant for us does not reach it.
  */
 export function guardServer(pid: number, account: ServerAccount | undefined): Guard {
-  const shell = spawn('/bin/sh', ['-c', script, 'hedgerow-guard', String(pid)], { cwd: '/', env: serverEnvironment, ...account, detached: true, stdio: ['pipe', 'ignore', 'ignore'] })
+  const shell = spawn('/bin/sh', ['-c', script, 'hedgerow-guard', String(pid)], {
+    cwd: '/',
+    env: serverEnvironment,
+    ...account,
+    detached: true,
+    stdio: ['pipe', 'ignore', 'ignore'],
+  })
   const line = shell.stdin as Socket
   line.on('error', () => undefined)
   shell.on('error', () => undefined)

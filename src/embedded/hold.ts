@@ -35,7 +35,10 @@ async function refuseLiving(directory: string, last: number): Promise<void> {
   const holder = await readFile(holderFile(directory, last), 'utf8').catch(() => '')
   const pid = Number.parseInt(holder, 10)
   if (!Number.isInteger(pid) || (await processIdentity(pid)) !== holder) return
-  throw new EmbeddedServerError(`the state directory ${directory} is in use by process ${pid}`, 'stop that one first, or set HEDGEROW_STATE to another directory')
+  throw new EmbeddedServerError(
+    `the state directory ${directory} is in use by process ${pid}`,
+    'stop that one first, or set HEDGEROW_STATE to another directory',
+  )
 }
 
 async function claimed(directory: string, next: number, identity: string): Promise<boolean> {

@@ -9,7 +9,11 @@ const run = promisify(execFile)
 
 /** Tells a process from a later one with the same number: undefined once it is gone. */
 export async function processIdentity(pid: number): Promise<string | undefined> {
-  if (process.platform !== 'linux') return await run('/bin/ps', ['-o', 'lstart=', '-p', String(pid)]).then(({ stdout }) => `${pid} ${stdout.trim()}`, () => undefined)
+  if (process.platform !== 'linux')
+    return await run('/bin/ps', ['-o', 'lstart=', '-p', String(pid)]).then(
+      ({ stdout }) => `${pid} ${stdout.trim()}`,
+      () => undefined,
+    )
   try {
     const [boot, line] = await Promise.all([readFile('/proc/sys/kernel/random/boot_id', 'utf8'), readFile(`/proc/${pid}/stat`, 'utf8')])
     const fields = line.slice(line.lastIndexOf(')') + 2).split(' ')
@@ -44,7 +48,10 @@ async function workingIn(directory: string): Promise<readonly number[]> {
 async function namedIn(directory: string): Promise<readonly number[]> {
   const pid = (await readFile(join(directory, 'postmaster.pid'), 'utf8').catch(() => '')).split('\n')[0] ?? ''
   if (!/^\d+$/.test(pid)) return []
-  const command = await run('/bin/ps', ['-o', 'command=', '-p', pid]).then(({ stdout }) => stdout, () => '')
+  const command = await run('/bin/ps', ['-o', 'command=', '-p', pid]).then(
+    ({ stdout }) => stdout,
+    () => '',
+  )
   return command.includes('postgres') && command.includes(directory) ? [Number(pid)] : []
 }
 

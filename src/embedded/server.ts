@@ -68,7 +68,10 @@ export async function startServer(options: EmbeddedServerOptions): Promise<Embed
     const password = await superuserPassword(join(home, 'password'), dataDirectory)
     const settings: Readonly<Record<string, string>> = { ...fixedSettings, ...options.settings }
     await makeDataDirectory(runnable, dataDirectory, password, account, settings['fsync'] !== 'off')
-    const { port, postmaster } = await onFreePort(options.port ?? 0, async (chosen) => await startPostmaster({ native: runnable, dataDirectory, account, port: chosen, settings }))
+    const { port, postmaster } = await onFreePort(
+      options.port ?? 0,
+      async (chosen) => await startPostmaster({ native: runnable, dataDirectory, account, port: chosen, settings }),
+    )
     options.log?.('info', 'embedded.started', { port, pid: postmaster.pid })
     void postmaster.ended.then(() => options.log?.('info', 'embedded.ended', { port, pid: postmaster.pid }))
     let stopping: Promise<void> | undefined
@@ -94,17 +97,24 @@ async function ownDirectory(directory: string): Promise<string> {
     await mkdir(home, { recursive: true, mode: 0o700 })
     const us = process.getuid?.() ?? 0
     const { uid, mode } = await stat(home)
-    if (uid !== us && us !== 0) throw new EmbeddedServerError(`the state directory ${home} belongs to another account`, 'start as its owner, or set HEDGEROW_STATE to another directory')
+    if (uid !== us && us !== 0)
+      throw new EmbeddedServerError(`the state directory ${home} belongs to another account`, 'start as its owner, or set HEDGEROW_STATE to another directory')
     if ((mode & 0o777) !== 0o700) await chmod(home, 0o700)
     return home
   } catch (error) {
     if (error instanceof EmbeddedServerError) throw error
-    throw new EmbeddedServerError(`the state directory ${directory} cannot be used (${(error as NodeJS.ErrnoException).code ?? 'unknown'})`, 'make it writable for this account, or set HEDGEROW_STATE to another directory')
+    throw new EmbeddedServerError(
+      `the state directory ${directory} cannot be used (${(error as NodeJS.ErrnoException).code ?? 'unknown'})`,
+      'make it writable for this account, or set HEDGEROW_STATE to another directory',
+    )
   }
 }
 
 /** A port can be taken between our look and the server's: another is tried, unless it was asked for by number. */
-async function onFreePort(wanted: number, start: (port: number) => Promise<Postmaster | undefined>): Promise<{ readonly port: number; readonly postmaster: Postmaster }> {
+async function onFreePort(
+  wanted: number,
+  start: (port: number) => Promise<Postmaster | undefined>,
+): Promise<{ readonly port: number; readonly postmaster: Postmaster }> {
   for (let attempt = 0; attempt < 10; attempt++) {
     const port = wanted === 0 ? await freePort(host) : wanted
     const postmaster = await start(port)

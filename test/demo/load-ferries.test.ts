@@ -65,13 +65,17 @@ describe('the ferry company', () => {
   })
 
   test('has topics that hundreds of riders complain about and topics that hardly anybody does', async () => {
-    const { rows } = await ferries.query<{ riders: number }>('SELECT count(DISTINCT rider_id)::integer AS riders FROM complaints JOIN trips USING (trip_id) GROUP BY topic ORDER BY riders')
+    const { rows } = await ferries.query<{ riders: number }>(
+      'SELECT count(DISTINCT rider_id)::integer AS riders FROM complaints JOIN trips USING (trip_id) GROUP BY topic ORDER BY riders',
+    )
     expect(rows.at(0)?.riders).toBeLessThan(60)
     expect(rows.at(-1)?.riders).toBeGreaterThan(2_000)
   })
 
   test('ties its tables together with valid keys', async () => {
-    const { rows } = await ferries.query("SELECT conrelid::regclass::text AS relation, contype::text AS kind, count(*)::integer AS n FROM pg_constraint WHERE contype IN ('p', 'f') AND convalidated AND connamespace = 'public'::regnamespace GROUP BY 1, 2 ORDER BY 1, 2")
+    const { rows } = await ferries.query(
+      "SELECT conrelid::regclass::text AS relation, contype::text AS kind, count(*)::integer AS n FROM pg_constraint WHERE contype IN ('p', 'f') AND convalidated AND connamespace = 'public'::regnamespace GROUP BY 1, 2 ORDER BY 1, 2",
+    )
     expect(rows).toEqual([
       { relation: 'complaints', kind: 'f', n: 1 },
       { relation: 'complaints', kind: 'p', n: 1 },
@@ -90,7 +94,8 @@ describe('the ferry company', () => {
   })
 
   test('comes out the same each time, also in a smaller company', async () => {
-    const digest = "SELECT md5(string_agg(t::text, ',' ORDER BY trip_id)) AS trips, (SELECT md5(string_agg(r::text, ',' ORDER BY rider_id)) FROM riders r) AS riders FROM trips t"
+    const digest =
+      "SELECT md5(string_agg(t::text, ',' ORDER BY trip_id)) AS trips, (SELECT md5(string_agg(r::text, ',' ORDER BY rider_id)) FROM riders r) AS riders FROM trips t"
     const digests = await Promise.all(
       [1, 2].map(async () => {
         const url = await server.createDatabase('ferries_small')

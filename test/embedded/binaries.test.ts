@@ -67,7 +67,11 @@ describe.runIf(root)('a server started by an unprivileged account', () => {
     const home = join(scratch.path, 'home')
     mkdirSync(home, { mode: 0o700 })
     chownSync(home, account.uid, account.gid)
-    const { child, url, pid } = await launch(launcher, { directory: join(home, 'state'), settings, native }, { ...account, env: { HOME: home, PATH: process.env['PATH'] } })
+    const { child, url, pid } = await launch(
+      launcher,
+      { directory: join(home, 'state'), settings, native },
+      { ...account, env: { HOME: home, PATH: process.env['PATH'] } },
+    )
     const client = new pg.Client({ connectionString: url })
     await client.connect()
     expect((await client.query('SELECT 1 AS one')).rows).toEqual([{ one: 1 }])
@@ -85,8 +89,8 @@ describe.runIf(root)('a server started by an unprivileged account', () => {
     chmodSync(scratch.path, 0o755)
     mkdirSync(join(scratch.path, 'state'), { mode: 0o755 })
     mkdirSync(join(scratch.path, 'state', 'postgresql'), { mode: 0o700 })
-    await expect(launch(launcher, { directory: join(scratch.path, 'state'), settings, native: packagedBinaries() }, { uid: 65534, gid: 65534 })).rejects.toThrow(
-      /belongs to another account: start as its owner/,
-    )
+    await expect(
+      launch(launcher, { directory: join(scratch.path, 'state'), settings, native: packagedBinaries() }, { uid: 65534, gid: 65534 }),
+    ).rejects.toThrow(/belongs to another account: start as its owner/)
   })
 })

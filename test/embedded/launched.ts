@@ -54,7 +54,7 @@ export async function endLaunched({ child }: Launched, signal: NodeJS.Signals = 
 
 /** Waits until the process has ended, reaped by its parent or not. */
 export async function gone(pid: number, withinMs = 10_000): Promise<boolean> {
-  for (const until = Date.now() + withinMs; Date.now() < until; ) {
+  for (const until = Date.now() + withinMs; Date.now() < until;) {
     if (!(await running(pid))) return true
     await new Promise((resolve) => setTimeout(resolve, 25))
   }

@@ -46,9 +46,12 @@ async function rows(url: string, sql: string): Promise<unknown[]> {
 describe('a started server', () => {
   test('answers on its own host alone, in UTF-8 and UTC, and has dblink', async () => {
     const server = await start()
-    expect(await rows(server.url(), "SELECT current_setting('server_encoding') AS encoding, current_setting('TimeZone') AS zone, current_setting('unix_socket_directories') AS sockets")).toEqual([
-      { encoding: 'UTF8', zone: 'UTC', sockets: '' },
-    ])
+    expect(
+      await rows(
+        server.url(),
+        "SELECT current_setting('server_encoding') AS encoding, current_setting('TimeZone') AS zone, current_setting('unix_socket_directories') AS sockets",
+      ),
+    ).toEqual([{ encoding: 'UTF8', zone: 'UTC', sockets: '' }])
     await rows(server.url(), 'CREATE EXTENSION dblink')
     const others = Object.values(networkInterfaces()).flatMap((addresses) => (addresses ?? []).filter(({ internal, family }) => !internal && family === 'IPv4'))
     for (const { address } of others) {
@@ -60,7 +63,7 @@ describe('a started server', () => {
 
   test('lets nobody in without the password', async () => {
     const server = await start()
-    expect(await rows(server.url(), "SELECT DISTINCT auth_method FROM pg_hba_file_rules")).toEqual([{ auth_method: 'scram-sha-256' }])
+    expect(await rows(server.url(), 'SELECT DISTINCT auth_method FROM pg_hba_file_rules')).toEqual([{ auth_method: 'scram-sha-256' }])
     const wrong = new URL(server.url())
     wrong.password = 'guess'
     await expect(rows(wrong.href, 'SELECT 1')).rejects.toThrow(/password authentication failed/)

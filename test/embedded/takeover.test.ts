@@ -148,7 +148,7 @@ describe('what a killed process left behind', () => {
 
   test('a copy of a data directory is another directory: the running one is left alone', async () => {
     await (await startServer(options())).stop()
-    const { child, url } = await launchOne()
+    const { url } = await launchOne()
     const copy = join(scratch.path, 'copy', 'postgresql')
     cpSync(join(options().directory, 'postgresql'), copy, { recursive: true, filter: (name) => !name.includes('holder.') })
     if (process.getuid?.() === 0) chownAll(join(copy, 'data'), statSync(join(options().directory, 'postgresql', 'data')))
