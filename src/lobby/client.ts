@@ -127,6 +127,7 @@ async function readPublished(client: pg.Client, text: string, values: readonly (
     const rows = (await client.query<(string | null)[]>({ text: `FETCH FORWARD ${ceiling + 1} FROM published`, rowMode: 'array' })).rows
     return rows.length > ceiling ? 'too-many' : rows
   } finally {
-    await client.query('ROLLBACK')
+    // Where this fails the connection is lost, and with it the transaction.
+    await client.query('ROLLBACK').catch(() => undefined)
   }
 }

@@ -24,15 +24,17 @@ export async function installDataSet(lobby: pg.Client, vault: pg.Client, dataSet
   return inTransaction(vault, 'BEGIN ISOLATION LEVEL REPEATABLE READ READ ONLY', async () => {
     const shape = await readVaultShape(vault, dataSet)
     const plans = planTables(dataSet, shape)
-    await inTransaction(lobby, 'BEGIN', () => prepare(lobby, dataSet, plans, superuser))
+    await inTransaction(lobby, 'BEGIN', () => prepare(lobby, dataSet, plans))
+    await inTransaction(lobby, 'BEGIN', () => installDblink(lobby, dataSet.name, pull, superuser))
     await inTransaction(lobby, 'BEGIN', () => installTypes(lobby, shape.types))
     const published = plans.filter((plan) => plan.kind === 'published')
     for (const [at, plan] of published.entries()) await stagePublished(vault, lobby, plan, at)
     await inTransaction(lobby, 'BEGIN', async () => {
-      await installFunctions(lobby, pull)
+      await installFunctions(lobby)
       await installTables(lobby, dataSet, plans, published)
       await lobby.query('DROP SCHEMA hedgerow_stage CASCADE')
-      for (const open of await closeFunctions(lobby)) warn(`analysts of ${dataSet.name} can call ${open}: a superuser must REVOKE EXECUTE on it from PUBLIC`)
+      const open = await closeFunctions(lobby)
+      if (open.length > 0) warn(`functions that analysts should not have are open to them: have a superuser run in ${dataSet.name}: REVOKE EXECUTE ON FUNCTION ${open.join(', ')} FROM PUBLIC`)
     })
     return plans.map((plan) => plan.key)
   })
@@ -54,7 +56,7 @@ async function refuseStrangers(lobby: pg.Client, dataSet: DataSet): Promise<void
   }
 }
 
-async function prepare(lobby: pg.Client, dataSet: DataSet, plans: readonly TablePlan[], superuser: boolean): Promise<void> {
+async function prepare(lobby: pg.Client, dataSet: DataSet, plans: readonly TablePlan[]): Promise<void> {
   const schemas = new Set([dataSet.schema, ...plans.map((plan) => plan.schema)])
   for (const schema of [...schemas, 'hedgerow', 'hedgerow_inside']) await lobby.query(`CREATE SCHEMA IF NOT EXISTS ${name(schema)}`)
   await lobby.query('DROP SCHEMA IF EXISTS hedgerow_stage CASCADE')
@@ -66,22 +68,29 @@ async function prepare(lobby: pg.Client, dataSet: DataSet, plans: readonly Table
   for (const schema of [...schemas, 'hedgerow']) await lobby.query(`GRANT USAGE ON SCHEMA ${name(schema)} TO hedgerow_analyst, hedgerow_reader`)
   await lobby.query('REVOKE CREATE ON SCHEMA public FROM PUBLIC')
   await lobby.query('CREATE TABLE IF NOT EXISTS hedgerow_inside.made (key text PRIMARY KEY, kind text NOT NULL, signature text NOT NULL)')
-  await installDblink(lobby, superuser)
 }
 
-async function installDblink(lobby: pg.Client, superuser: boolean): Promise<void> {
+/** Only a superuser can install dblink; another role finds it prepared, or learns what to ask for. */
+async function installDblink(lobby: pg.Client, database: string, pull: PullAddress, superuser: boolean): Promise<void> {
   const [row] = await rowsOf(lobby, "SELECT n.nspname FROM pg_catalog.pg_extension e JOIN pg_catalog.pg_namespace n ON n.oid = e.extnamespace WHERE e.extname = 'dblink'")
   try {
     if (row === undefined) await lobby.query('CREATE EXTENSION dblink SCHEMA hedgerow_inside')
     else if (row[0] !== 'hedgerow_inside') await lobby.query('ALTER EXTENSION dblink SET SCHEMA hedgerow_inside')
+    await installServer(lobby, pull)
   } catch (error) {
     const code = sqlstateOf(error)
-    if (code === '42501') throw new LobbyProblem('the lobby\'s role may not install dblink', 'have a superuser run CREATE EXTENSION dblink SCHEMA hedgerow_inside in this database')
-    if (code === '0A000' || code === '58P01') throw new LobbyProblem('the lobby\'s server has no dblink', 'install the contrib modules of PostgreSQL there')
+    if (code === '42501') {
+      throw new LobbyProblem(
+        `the lobby's role may not install dblink in the database ${database}`,
+        `have a superuser run there: CREATE EXTENSION dblink SCHEMA hedgerow_inside; GRANT USAGE ON FOREIGN DATA WRAPPER dblink_fdw TO the lobby's role`,
+      )
+    }
+    if (code === '0A000' || code === '58P01') throw new LobbyProblem("the lobby's server has no dblink", 'install the contrib modules of PostgreSQL there')
     throw error
   }
-  if (superuser) await lobby.query('REVOKE ALL ON ALL FUNCTIONS IN SCHEMA hedgerow_inside FROM PUBLIC')
-  if (superuser) for (const signature of dblinkFunctions) await lobby.query(`GRANT EXECUTE ON FUNCTION hedgerow_inside.${signature} TO hedgerow_owner`)
+  if (!superuser) return
+  const grants = dblinkFunctions.map((signature) => `GRANT EXECUTE ON FUNCTION hedgerow_inside.${signature} TO hedgerow_owner`)
+  await lobby.query(['REVOKE ALL ON ALL FUNCTIONS IN SCHEMA hedgerow_inside FROM PUBLIC', ...grants].join('; '))
 }
 
 async function installTables(lobby: pg.Client, dataSet: DataSet, plans: readonly TablePlan[], published: readonly TablePlan[]): Promise<void> {
@@ -98,20 +107,23 @@ async function installTables(lobby: pg.Client, dataSet: DataSet, plans: readonly
     await lobby.query(plan.createAs(plan.schema, plan.name))
     for (const index of plan.indexes) await lobby.query(index.createOn(plan.schema, plan.name, index.name))
   }
-  await addForeignKeys(lobby, plans)
   for (const plan of fresh) await lobby.query(closeShellTexts(plan).join('; '))
   for (const plan of plans) await grantTable(lobby, plan)
+  await addForeignKeys(lobby, plans)
   for (const table of dataSet.tables.values()) await lobby.query(commentTexts(dataSet, table).join('; '))
   await lobby.query("DELETE FROM hedgerow_inside.made WHERE kind <> 'view'")
   for (const plan of plans) await rowsOf(lobby, 'INSERT INTO hedgerow_inside.made VALUES ($1, $2, $3)', [plan.key, plan.kind, plan.signature])
 }
 
+/** As their owner, whom a shell lets pass: PostgreSQL looks for rows without a partner. */
 async function addForeignKeys(lobby: pg.Client, plans: readonly TablePlan[]): Promise<void> {
+  await lobby.query('SET LOCAL ROLE hedgerow_owner')
   for (const plan of plans) {
     const rows = await rowsOf(lobby, "SELECT conname FROM pg_catalog.pg_constraint WHERE conrelid = $1::regclass AND contype = 'f'", [qualified(plan.schema, plan.name)])
     const here = new Set(rows.map(([constraint]) => constraint))
     for (const key of plan.foreignKeys) if (!here.has(key.name)) await lobby.query(key.add)
   }
+  await lobby.query('RESET ROLE')
 }
 
 async function grantTable(lobby: pg.Client, plan: TablePlan): Promise<void> {
@@ -119,8 +131,7 @@ async function grantTable(lobby: pg.Client, plan: TablePlan): Promise<void> {
   await lobby.query(`ALTER TABLE ${table} OWNER TO hedgerow_owner; GRANT SELECT ON ${table} TO hedgerow_analyst, hedgerow_reader`)
 }
 
-async function installFunctions(lobby: pg.Client, pull: PullAddress): Promise<void> {
-  await installServer(lobby, pull)
+async function installFunctions(lobby: pg.Client): Promise<void> {
   for (const made of lobbyFunctions) {
     await lobby.query(`${made.text}; ALTER FUNCTION ${made.signature} OWNER TO hedgerow_owner; REVOKE ALL ON FUNCTION ${made.signature} FROM PUBLIC`)
     if (made.to !== null) await lobby.query(`GRANT EXECUTE ON FUNCTION ${made.signature} TO ${made.to}`)

@@ -52,7 +52,6 @@ async function install(order: LobbyOrder): Promise<LobbyReport> {
   const main = await openInstaller(order.lobbyUrl)
   try {
     const superuser = await isSuperuser(main)
-    if (!superuser) warn('the lobby\'s role is no superuser: grant it pg_signal_backend, so that analysts\' sessions cannot hold a policy load up')
     await quiet(main, superuser)
     await refuseVault(order, main)
     const known = await withWatcher(order.lobbyUrl, main, [], noteEnded, () => installRoles(main, order, superuser, warn, noteEnded))

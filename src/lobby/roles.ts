@@ -55,7 +55,7 @@ export async function knownAnalysts(client: pg.Client, policies: Policies): Prom
 export async function installAnalysts(client: pg.Client, policies: Policies, known: RoleOutcome, limits: AnalystLimits, superuser: boolean, warn: (text: string) => void): Promise<void> {
   for (const role of known.removed) await client.query(`ALTER ROLE ${name(role)} NOLOGIN PASSWORD NULL`)
   for (const analyst of policies.analysts.values()) {
-    await createAnalyst(client, analyst.name)
+    await createAnalyst(client, analyst.name, superuser)
     await revokeMemberships(client, analyst.name)
     const login = analyst.login === null ? 'NOLOGIN PASSWORD NULL' : `LOGIN PASSWORD ${literal(analyst.login)}`
     const attributes = `INHERIT NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}CONNECTION LIMIT ${limits.connections} VALID UNTIL 'infinity'`
@@ -64,7 +64,7 @@ export async function installAnalysts(client: pg.Client, policies: Policies, kno
   }
 }
 
-async function createAnalyst(client: pg.Client, role: string): Promise<void> {
+async function createAnalyst(client: pg.Client, role: string, superuser: boolean): Promise<void> {
   const [found] = await rowsOf(
     client,
     `SELECT EXISTS (SELECT FROM pg_catalog.pg_auth_members m WHERE m.member = r.oid AND m.roleid = pg_catalog.to_regrole('hedgerow_analyst')), r.rolname = current_user
@@ -74,6 +74,8 @@ async function createAnalyst(client: pg.Client, role: string): Promise<void> {
   if (found === undefined) {
     await client.query(`CREATE ROLE ${name(role)} NOLOGIN`)
     await client.query(`GRANT hedgerow_analyst TO ${name(role)}`)
+    // Who is no superuser ends only sessions of roles it is a member of.
+    if (!superuser) await client.query(`GRANT ${name(role)} TO CURRENT_USER`)
   } else if (found[0] !== 't' || found[1] === 't') {
     throw new LobbyProblem(`the lobby's server has a role ${role} that Hedgerow did not make`, `drop that role or give the analyst ${role} another name`)
   }

@@ -1,9 +1,8 @@
 import { performance } from 'node:perf_hooks'
 import type pg from 'pg'
 import { afterAll, beforeAll, describe, expect, test } from 'vitest'
-import { installLobby } from '../../src/lobby/install.ts'
 import type { DataTable } from '../../src/policy/data-set.ts'
-import { failureOf, ferryAnalyst, ferryLobby, ferryPolicies, ferryTables, passwordOf, verifierOf, type FerryLobby } from './ferry-lobby.ts'
+import { failureOf, ferryAnalyst, ferryLobby, ferryPolicies, ferryTables, type FerryLobby } from './ferry-lobby.ts'
 
 let lobby: FerryLobby
 let admin: pg.Client
@@ -290,21 +289,5 @@ describe('a policy load', () => {
     await ledger.query('CREATE TABLE debits (id int)')
     await expect(lobby.install({ policies: overLedger })).rejects.toThrow(/with tables that Hedgerow did not make/)
     await ledger.query('DROP TABLE debits')
-  })
-
-  test('works as a role without superuser rights, and says what it could not close', async () => {
-    await admin.query(`CREATE ROLE porter LOGIN CREATEROLE CREATEDB PASSWORD '${verifierOf(passwordOf('porter'))}'`)
-    const url = new URL(lobby.url('postgres'))
-    url.username = 'porter'
-    url.password = encodeURIComponent(passwordOf('porter'))
-    await admin.query('GRANT CONNECT ON DATABASE postgres TO porter')
-    const attempt = installLobby({
-      lobbyUrl: url.href,
-      ledgerUrl: lobby.url('ferry_ledger'),
-      vaultUrl: lobby.url('ferry_vault'),
-      policies: lobby.policies,
-      pull: { host: lobby.pull.host, port: lobby.pull.port, password: 'x' },
-    })
-    await expect(attempt).rejects.toThrow()
   })
 })
