@@ -27,6 +27,7 @@ const readColumn: Read = (node) => {
   const fields = node.nodes('fields')
   const last = fields.at(-1)
   const star = last?.tag === 'A_Star'
+  if (star) last.done()
   const name = (star ? fields.slice(0, -1) : fields).map((field) => fieldName(field))
   return read(node, { kind: 'column', name, star, at: node.at })
 }
