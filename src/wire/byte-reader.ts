@@ -48,7 +48,7 @@ export class ByteReader {
   /** The next typed frame; throws Breach where its length is beyond `ceiling` bytes or its type is not among `types`. */
   async frame(ceiling: number, types: string): Promise<Frame> {
     const header = await this.exactly(5)
-    const type = String.fromCharCode(header[0]!)
+    const type = String.fromCharCode(header.readUInt8(0))
     const length = header.readInt32BE(1)
     if (!types.includes(type)) throw new Breach('08P01', `unexpected message type 0x${header.toString('hex', 0, 1)}`)
     if (length < 4 || length > ceiling) throw new Breach('08P01', `invalid message length ${length} (the most is ${ceiling})`)

@@ -25,7 +25,6 @@ export interface DownstreamEvents {
 /** The way from lobby to client. Frames stream through unread, but for the few that tell the session's state and for errors and notices. */
 export class Downstream {
   readonly #lobby: Socket
-  readonly #client: Socket
   readonly #facts: SessionFacts
   readonly #events: DownstreamEvents
   readonly #outlet: Outlet
@@ -35,7 +34,6 @@ export class Downstream {
 
   constructor(lobby: Socket, client: Socket, facts: SessionFacts, events: DownstreamEvents) {
     this.#lobby = lobby
-    this.#client = client
     this.#facts = facts
     this.#events = events
     this.#outlet = new Outlet(client)

@@ -22,7 +22,7 @@ export function readFields(frame: Buffer): readonly Field[] | null {
   while (at < frame.length && frame[at] !== 0) {
     const end = frame.indexOf(0, at + 1)
     if (end < 0) return null
-    fields.push([String.fromCharCode(frame[at]!), frame.toString('latin1', at + 1, end)])
+    fields.push([String.fromCharCode(frame.readUInt8(at)), frame.toString('latin1', at + 1, end)])
     at = end + 1
   }
   return at === frame.length - 1 ? fields : null

@@ -12,6 +12,33 @@ export type Piece =
 const headerBytes = 5
 const firstHold = 16_384
 
+/** A frame that grows as its bytes arrive. */
+class Gathering {
+  readonly #whole: number
+  #bytes: Buffer
+  #fill = 0
+
+  constructor(whole: number) {
+    this.#whole = whole
+    this.#bytes = Buffer.allocUnsafe(Math.min(firstHold, whole))
+  }
+
+  add(source: Buffer, from: number, to: number): void {
+    const fill = this.#fill + to - from
+    if (fill > this.#bytes.length) {
+      const grown = Buffer.allocUnsafe(Math.min(this.#whole, Math.max(fill, this.#bytes.length * 2)))
+      this.#bytes.copy(grown, 0, 0, this.#fill)
+      this.#bytes = grown
+    }
+    source.copy(this.#bytes, this.#fill, from, to)
+    this.#fill = fill
+  }
+
+  piece(): Piece {
+    return { kind: 'frame', type: this.#bytes.readUInt8(0), bytes: this.#bytes.subarray(0, this.#fill) }
+  }
+}
+
 /**
  * Cuts a stream of typed frames (one byte of type, four of length that count themselves) arriving in chunks of any size. Passing frames stream
  * through in parts and are never gathered; a held frame grows as its bytes arrive, not by what its header promises.
@@ -22,8 +49,7 @@ export class Framer {
   readonly #header = Buffer.alloc(headerBytes)
   #headerFill = 0
   #left = 0
-  #held: Buffer | null = null
-  #heldFill = 0
+  #held: Gathering | null = null
   #broken = false
 
   constructor(treat: (type: number, length: number) => Treatment) {
@@ -43,9 +69,12 @@ export class Framer {
         const end = Math.min(chunk.length, at + this.#left)
         this.#left -= end - at
         if (this.#held !== null) {
-          this.#gather(chunk, at, end)
+          this.#held.add(chunk, at, end)
           run = end
-          if (this.#left === 0) yield this.#release()
+          if (this.#left === 0) {
+            yield this.#held.piece()
+            this.#held = null
+          }
         }
         at = end
         continue
@@ -62,7 +91,7 @@ export class Framer {
       } else at += headerBytes
       const source = split ? this.#header : chunk
       const place = split ? 0 : start
-      const type = source[place]!
+      const type = source.readUInt8(place)
       const length = source.readInt32BE(place + 1)
       const treatment = length < 4 ? 'refuse' : this.#treat(type, length)
       if (treatment === 'pass') {
@@ -83,32 +112,13 @@ export class Framer {
         yield { kind: 'frame', type, bytes: chunk.subarray(start, end) }
         continue
       }
-      this.#held = Buffer.allocUnsafe(Math.min(firstHold, 1 + length))
-      this.#heldFill = 0
-      this.#left = length - 4
-      this.#gather(source, place, place + headerBytes)
+      const held = new Gathering(1 + length)
+      held.add(source, place, place + headerBytes)
       run = at
-      if (this.#left === 0) yield this.#release()
+      this.#left = length - 4
+      if (this.#left > 0) this.#held = held
+      else yield held.piece()
     }
     if (at > run && !this.#broken) yield { kind: 'bytes', bytes: chunk.subarray(run, at) }
-  }
-
-  #gather(source: Buffer, from: number, to: number): void {
-    let held = this.#held!
-    const fill = this.#heldFill + to - from
-    if (fill > held.length) {
-      const whole = fill + this.#left
-      const grown = Buffer.allocUnsafe(Math.min(whole, Math.max(fill, held.length * 2)))
-      held.copy(grown, 0, 0, this.#heldFill)
-      this.#held = held = grown
-    }
-    source.copy(held, this.#heldFill, from, to)
-    this.#heldFill = fill
-  }
-
-  #release(): Piece {
-    const bytes = this.#held!.subarray(0, this.#heldFill)
-    this.#held = null
-    return { kind: 'frame', type: bytes[0]!, bytes }
   }
 }

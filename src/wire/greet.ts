@@ -28,7 +28,11 @@ export async function greet(plain: Socket, tls: SecureContext | null, ceiling: n
       asked = new Set([...asked, code])
       // Plaintext sent ahead of the handshake could be taken for what was said under it.
       if (reader.waiting > 0) {
-        throw new Breach('08P01', `received unencrypted data after ${code === sslRequest ? 'SSL' : 'GSSAPI encryption'} request`, 'This is a fault of the client, or someone in between.')
+        throw new Breach(
+          '08P01',
+          `received unencrypted data after ${code === sslRequest ? 'SSL' : 'GSSAPI encryption'} request`,
+          'This is a fault of the client, or someone in between.',
+        )
       }
       if (code === gssRequest || tls === null || socket !== plain) {
         socket.write('N')

@@ -23,7 +23,7 @@ export async function serveClients(options: WireOptions): Promise<Wire> {
   const sessions = new Map<number, Session>()
   const sockets = new Set<Socket>()
   const addresses = new Map<string, number>()
-  let draining = false
+  let closing: Promise<void> | null = null
   const goodbye = (session: Session) => session.end('57P01', 'terminating connection due to administrator command')
   const reception: Reception = {
     ...options,
@@ -32,7 +32,7 @@ export async function serveClients(options: WireOptions): Promise<Wire> {
     saltOf: options.saltOf ?? (() => null),
     onOpen: (session) => sessions.set(session.pid, session),
     onReady: (session) => {
-      if (draining && session.idle) goodbye(session)
+      if (closing !== null && session.idle) goodbye(session)
     },
     onEnd: (session) => {
       if (sessions.get(session.pid) === session) sessions.delete(session.pid)
@@ -56,24 +56,24 @@ export async function serveClients(options: WireOptions): Promise<Wire> {
     })
     void receive(socket, address, reception)
   })
+  const drain = async (): Promise<void> => {
+    const closed = new Promise<void>((resolve) => server.close(() => resolve()))
+    for (const session of sessions.values()) if (session.idle) goodbye(session)
+    const deadline = Date.now() + options.drainMs
+    while (sessions.size > 0 && Date.now() < deadline) await new Promise((resolve) => setTimeout(resolve, 20))
+    for (const session of sessions.values()) goodbye(session)
+    // Whoever has not logged in, or does not read the farewell.
+    const strays = setTimeout(() => {
+      for (const socket of sockets) socket.destroy()
+    }, 500)
+    await closed
+    clearTimeout(strays)
+  }
   await listening(server, options.port, options.host)
   server.on('error', (error) => log('error', 'wire.listener', { fault: error.name }))
   return {
     port: (server.address() as AddressInfo).port,
     sessions: () => sessions,
-    async close() {
-      if (draining) return
-      draining = true
-      const closed = new Promise<void>((resolve) => server.close(() => resolve()))
-      for (const session of [...sessions.values()]) if (session.idle) goodbye(session)
-      const deadline = Date.now() + options.drainMs
-      while (sessions.size > 0 && Date.now() < deadline) await new Promise((resolve) => setTimeout(resolve, 20))
-      for (const session of [...sessions.values()]) goodbye(session)
-      const strays = setTimeout(() => {
-        for (const socket of sockets) socket.destroy()
-      }, 500)
-      await closed
-      clearTimeout(strays)
-    },
+    close: () => (closing ??= drain()),
   }
 }

@@ -4,7 +4,10 @@
 export function frame(type: string, ...body: readonly Uint8Array[]): Buffer {
   const header = Buffer.allocUnsafe(5)
   header.write(type, 0, 'latin1')
-  header.writeInt32BE(body.reduce((sum, part) => sum + part.length, 4), 1)
+  header.writeInt32BE(
+    body.reduce((sum, part) => sum + part.length, 4),
+    1,
+  )
   return Buffer.concat([header, ...body])
 }
 

@@ -46,7 +46,7 @@ export class PullSession {
       const running = new AbortController()
       this.#running = running
       next = this.#next()
-      next.then(
+      void next.then(
         ({ type }) => {
           if (type === 'X') running.abort()
         },
@@ -79,7 +79,7 @@ export class PullSession {
         this.#log('warn', 'pull.unreadable', { pid: this.pid })
         return [complaintFrame({ severity: 'ERROR', sqlstate: '42601', message: message.message })]
       case 'pull':
-        return await this.#pull(message.request, signal)
+        return this.#pull(message.request, signal)
       default:
         return unreachable(message)
     }

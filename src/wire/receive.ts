@@ -37,7 +37,7 @@ export async function receive(plain: Socket, address: string, reception: Recepti
   } catch (error) {
     if (error instanceof Gone) socket.destroy()
     else if (error instanceof Breach) {
-      log('warn', 'wire.turned_away', { address, sqlstate: error.sqlstate })
+      if (error.sqlstate !== '28P01') log('warn', 'wire.turned_away', { address, sqlstate: error.sqlstate })
       farewell(socket, complaintFrame({ severity: 'FATAL', sqlstate: error.sqlstate, message: error.message, detail: error.detail }))
     } else {
       log('error', 'wire.broken', { address, fault: error instanceof Error ? error.name : 'unknown' })
@@ -75,7 +75,20 @@ async function admit(opening: Opening & { readonly kind: 'startup' }, address: s
       reception.onOpen(session)
     }
     await relay(
-      { client: socket, lobby, lobbyAddress: reception.lobby, user, database, address, gate, log, ceilings, loginTimeoutMs, onOpen, onReady: reception.onReady },
+      {
+        client: socket,
+        lobby,
+        lobbyAddress: reception.lobby,
+        user,
+        database,
+        address,
+        gate,
+        log,
+        ceilings,
+        loginTimeoutMs,
+        onOpen,
+        onReady: reception.onReady,
+      },
       reader.leave(),
     )
     if (opened !== null) reception.onEnd(opened)

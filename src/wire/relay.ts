@@ -124,7 +124,7 @@ class Relay implements Session {
   #breach(breach: Breach): void {
     if (this.#over) return
     const { client, log, user, database } = this.#parts
-    log('warn', 'wire.ended', { user, database, pid: this.#facts.pid, sqlstate: breach.sqlstate })
+    if (breach.sqlstate !== '28P01') log('warn', 'wire.ended', { user, database, pid: this.#facts.pid, sqlstate: breach.sqlstate })
     this.#close()
     this.#downstream.stop()
     if (this.#downstream.between && !this.#facts.ended) {
@@ -143,7 +143,11 @@ class Relay implements Session {
   #withoutScram(request: number): void {
     this.#parts.log('error', 'wire.lobby_without_scram', { user: this.#parts.user, database: this.#parts.database, request })
     this.#breach(
-      new Breach('28000', 'the lobby does not authenticate analysts by SCRAM', 'Its pg_hba.conf must say scram-sha-256 for connections from Hedgerow; whoever runs it can put that right.'),
+      new Breach(
+        '28000',
+        'the lobby does not authenticate analysts by SCRAM',
+        'Its pg_hba.conf must say scram-sha-256 for connections from Hedgerow; whoever runs it can put that right.',
+      ),
     )
   }
 
@@ -175,7 +179,8 @@ class Relay implements Session {
     lobby.destroy()
     if (!expected) log('warn', 'wire.lobby_lost', { user, database, pid: this.#facts.pid })
     if (expected) farewell(client, null)
-    else if (this.#downstream.between) farewell(client, complaintFrame({ severity: 'FATAL', sqlstate: '08006', message: 'the connection to the lobby was lost' }))
+    else if (this.#downstream.between)
+      farewell(client, complaintFrame({ severity: 'FATAL', sqlstate: '08006', message: 'the connection to the lobby was lost' }))
     else client.destroy()
     this.#finished()
   }

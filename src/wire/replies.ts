@@ -15,7 +15,7 @@ export function reworded(frame: Buffer, pipeline: Pipeline, clientEncoding: stri
   const field = (letter: string) => fields.find(([name]) => name === letter)?.[1] ?? ''
   if (type === 'E' && field('C') === '42883') {
     const refusal = pipeline.refusalIn(field('M'))
-    if (refusal !== null) return complaintFrame({ severity: 'ERROR', ...refusal }, codecOf(clientEncoding).encode)
+    if (refusal !== null) return complaintFrame({ severity: 'ERROR', ...refusal }, (text) => codecOf(clientEncoding).encode(text))
   }
   if (oursInContext.test(field('W'))) return without(type, fields, 'WPpq')
   if (field('P') !== '' && pipeline.positionIsOurs) return without(type, fields, 'P')

@@ -98,5 +98,5 @@ function sha256(bytes: Uint8Array): Buffer {
 }
 
 function xor(left: Buffer, right: Buffer): Buffer {
-  return Buffer.from(left.map((byte, index) => byte ^ right[index]!))
+  return Buffer.from(left.map((byte, index) => byte ^ (right[index] ?? 0)))
 }

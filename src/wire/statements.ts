@@ -40,7 +40,12 @@ async function judgeText(statement: StatementFrame, text: string, facts: Session
     return { bytes: withText(statement, codecOf(facts.clientEncoding).encode(verdict.text)), rewritten: true, refusals: verdict.refusals }
   } catch (error) {
     const failure = error instanceof Failure ? error : new Failure('internal')
-    log('error', 'wire.gate_failed', { user: facts.user, database: facts.database, reference: failure.reference, fault: error instanceof Error ? error.name : 'unknown' })
+    log('error', 'wire.gate_failed', {
+      user: facts.user,
+      database: facts.database,
+      reference: failure.reference,
+      fault: error instanceof Error ? error.name : 'unknown',
+    })
     return refused(statement, {
       sqlstate: 'XX000',
       message: `the statement could not be judged (reference ${failure.reference})`,

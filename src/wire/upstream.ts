@@ -25,7 +25,6 @@ export interface MessageCeilings {
 /** The way from client to lobby. A Query or Parse is judged before it goes on; whatever comes after it waits, in order. */
 export class Upstream {
   readonly #client: Socket
-  readonly #lobby: Socket
   readonly #facts: SessionFacts
   readonly #gate: Gate
   readonly #log: Log
@@ -40,7 +39,6 @@ export class Upstream {
 
   constructor(client: Socket, lobby: Socket, facts: SessionFacts, gate: Gate, log: Log, ceilings: MessageCeilings, onBreach: (breach: Breach) => void) {
     this.#client = client
-    this.#lobby = lobby
     this.#facts = facts
     this.#gate = gate
     this.#log = log

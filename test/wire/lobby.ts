@@ -98,7 +98,7 @@ export async function testLobby(options: Partial<WireOptions> = {}): Promise<Tes
     another,
     url: (over = {}) => `postgresql://${over.user ?? user}:${over.password ?? password}@127.0.0.1:${wire.port}/${over.database ?? database}`,
     stop: async () => {
-      await Promise.all(wires.map(async (each) => await each.close()))
+      await Promise.all(wires.map((each) => each.close()))
       const last = new pg.Client({ connectionString: server.url() })
       await last.connect()
       await last.query(`DROP DATABASE IF EXISTS ${database} WITH (FORCE)`)
@@ -110,7 +110,10 @@ export async function testLobby(options: Partial<WireOptions> = {}): Promise<Tes
 }
 
 /** A proxy that notes every byte on its way to the lobby. */
-export async function tap(host: string, port: number): Promise<{ readonly port: number; readonly heard: () => Buffer; readonly connections: () => number; close(): void }> {
+export async function tap(
+  host: string,
+  port: number,
+): Promise<{ readonly port: number; readonly heard: () => Buffer; readonly connections: () => number; close(): void }> {
   const chunks: Buffer[] = []
   const sockets = new Set<Socket>()
   let connections = 0

@@ -29,19 +29,28 @@ async function attempt(user: string, database: string, password: string, port = 
 }
 
 const saltIn = (seen: readonly Received[]) => /,s=([^,]+),i=(\d+)$/.exec(seen[1]?.body.toString('latin1') ?? '')?.slice(1)
-const shape = (seen: readonly Received[]) => seen.map((each) => ({ type: each.type, length: each.bytes.length, fields: each.type === 'E' ? fields(each) : null }))
+const shape = (seen: readonly Received[]) =>
+  seen.map((each) => ({ type: each.type, length: each.bytes.length, fields: each.type === 'E' ? fields(each) : null }))
 
 describe('a log-in', () => {
   test('with the right password opens a session of the lobby', async () => {
     const seen = await attempt(lobby.user, lobby.database, lobby.password)
-    expect(seen.filter((each) => each.type !== 'S').map((each) => each.type).join('')).toBe('RRRRKZ')
+    expect(
+      seen
+        .filter((each) => each.type !== 'S')
+        .map((each) => each.type)
+        .join(''),
+    ).toBe('RRRRKZ')
     expect(lobby.events).not.toContain('wire.login_failed')
   })
 
   test('of an unknown user, or into an unknown or foreign database, looks like one with a wrong password, byte by byte but for salt and nonce', async () => {
     const wrong = await attempt(lobby.user, lobby.database, 'pier')
     expect(fields(wrong.at(-1))).toEqual({
-      S: 'FATAL', V: 'FATAL', C: '28P01', M: `password authentication failed for user "${lobby.user}"`,
+      S: 'FATAL',
+      V: 'FATAL',
+      C: '28P01',
+      M: `password authentication failed for user "${lobby.user}"`,
     })
     for (const database of ['nosuch', 'postgres']) expect(shape(await attempt(lobby.user, database, lobby.password))).toEqual(shape(wrong))
     const stranger = lobby.user.replace(/^ana/, 'bob')
@@ -71,7 +80,11 @@ describe('a log-in', () => {
 
   test('never opens a replication connection, and loses no other parameter', async () => {
     const client = await RawClient.open(lobby.wire.port)
-    const seen = await client.logIn(lobby.user, lobby.database, lobby.password, { replication: 'database', application_name: 'pier', options: '-c hedgerow.epsilon=0.2' })
+    const seen = await client.logIn(lobby.user, lobby.database, lobby.password, {
+      replication: 'database',
+      application_name: 'pier',
+      options: '-c hedgerow.epsilon=0.2',
+    })
     expect(seen.at(-1)?.type).toBe('Z')
     client.send(query("SELECT current_setting('application_name') || current_setting('hedgerow.epsilon')"))
     expect((await client.until('Z')).find((each) => each.type === 'D')?.body.toString('latin1', 6)).toBe('pier0.2')
@@ -84,7 +97,10 @@ describe('a log-in', () => {
     const wiretap = await tap(lobby.server.host, lobby.server.port)
     const wire = await lobby.another({ lobby: { host: '127.0.0.1', port: wiretap.port } })
     const heard: number[] = []
-    for (const [first, last] of [[lobby.user, 'postgres'], ['postgres', lobby.user]]) {
+    for (const [first, last] of [
+      [lobby.user, 'postgres'],
+      ['postgres', lobby.user],
+    ]) {
       const client = await RawClient.open(wire.port)
       const twice = Buffer.from(`user\0${first}\0user\0${last}\0database\0${lobby.database}\0\0`)
       client.send(int32(8 + twice.length), int32(196_608), twice)

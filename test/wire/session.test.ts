@@ -74,7 +74,12 @@ describe('refusals', () => {
     const reply = await client.until('Z')
     expect(types(reply)).toBe('TDCEZ')
     expect(fields(reply.at(-2))).toEqual({
-      S: 'ERROR', V: 'ERROR', C: '42501', M: 'rows of people stay closed [rows.private]', H: 'SELECT count(*) FROM riders', P: '25',
+      S: 'ERROR',
+      V: 'ERROR',
+      C: '42501',
+      M: 'rows of people stay closed [rows.private]',
+      H: 'SELECT count(*) FROM riders',
+      P: '25',
     })
     client.socket.destroy()
   })

@@ -1,4 +1,4 @@
-import pg from 'pg'
+import type pg from 'pg'
 import { afterAll, beforeAll, describe, expect, test } from 'vitest'
 import { frame, int32 } from '../../src/wire/messages.ts'
 import { tap, testLobby, type TestLobby } from './lobby.ts'
@@ -34,8 +34,15 @@ describe('what mentions nothing private', () => {
     const wire = await lobby.another({ lobby: { host: '127.0.0.1', port: wiretap.port } })
     const client = await raw(wire.port)
     const sent = Buffer.concat([
-      query("SELECT 'a''b', $q$\u00f6$q$ -- kept"), extended('SELECT $1::int', ['5']), frame('H'), sync, query(''),
-      frame('Q', Buffer.from('no end')), query('SELECT 1; SELECT 2'), frame('C', Buffer.from('Snosuch\0')), sync,
+      query("SELECT 'a''b', $q$\u00f6$q$ -- kept"),
+      extended('SELECT $1::int', ['5']),
+      frame('H'),
+      sync,
+      query(''),
+      frame('Q', Buffer.from('no end')),
+      query('SELECT 1; SELECT 2'),
+      frame('C', Buffer.from('Snosuch\0')),
+      sync,
     ])
     const from = wiretap.heard().length
     for (const byte of sent) {
@@ -99,7 +106,11 @@ describe('COPY', () => {
 
   test('whose Sync the lobby swallows leaves the session as it was', async () => {
     const client = await raw()
-    const copy = Buffer.concat([frame('P', Buffer.from('\0COPY notes FROM STDIN\0\0\0')), frame('B', Buffer.from('\0\0\0\0\0\0\0\0')), frame('E', Buffer.from('\0\0\0\0\0'))])
+    const copy = Buffer.concat([
+      frame('P', Buffer.from('\0COPY notes FROM STDIN\0\0\0')),
+      frame('B', Buffer.from('\0\0\0\0\0\0\0\0')),
+      frame('E', Buffer.from('\0\0\0\0\0')),
+    ])
     client.send(copy, sync)
     await client.until('G')
     client.send(frame('d', Buffer.from('1\tone\n')), frame('c'), sync)
