@@ -1,8 +1,6 @@
-import { execFile } from 'node:child_process'
 import { mkdtemp, readdir, rm, stat } from 'node:fs/promises'
 import { tmpdir } from 'node:os'
 import { dirname, join } from 'node:path'
-import { promisify } from 'node:util'
 import { serversOf } from '../../src/embedded/processes.ts'
 import { startServer } from '../../src/embedded/server.ts'
 
@@ -60,17 +58,18 @@ async function sweep(): Promise<void> {
 }
 
 async function container(image: string): Promise<TestBackend> {
-  await promisify(execFile)('docker', ['info'], { timeout: 20_000 }).catch(() => {
-    throw new Error(`HEDGEROW_TEST_IMAGE is ${image}, but no Docker engine answers: start one, or unset it to test on the embedded server`)
-  })
   const { GenericContainer, Wait } = await import('testcontainers')
   const password = 'harbour'
-  const started = await new GenericContainer(image)
+  const wanted = new GenericContainer(image)
     .withEnvironment({ POSTGRES_PASSWORD: password })
     .withCommand(['postgres', '-c', 'fsync=off', '-c', 'max_connections=200', '-c', 'max_prepared_transactions=10'])
     .withExposedPorts(5432)
     .withWaitStrategy(Wait.forLogMessage(/database system is ready to accept connections/, 2))
-    .start()
+  const started = await wanted.start().catch((error: unknown) => {
+    throw new Error(
+      `HEDGEROW_TEST_IMAGE is ${image}, but no container of it starts (${error instanceof Error ? error.message : 'unknown'}): see that a Docker engine answers, or unset it to test on the embedded server`,
+    )
+  })
   return {
     url: `postgresql://postgres:${password}@${started.getHost()}:${started.getMappedPort(5432)}/postgres`,
     stop: async () => {
