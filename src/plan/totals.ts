@@ -118,7 +118,12 @@ export function totalsOf(aggregates: readonly Aggregate[], owned: Owned, fanOut:
     return found >= 0 ? found : totals.push(total) - 1
   }
   const rows = (of: Scalar | null, filter: Scalar | null): bigint => rowsFor(new Set([...(of === null ? [] : scansOf(of)), ...(of === null && filter !== null ? scansOf(filter) : [])]), owned, fanOut, limit)
-  const twin = (of: Scalar, filter: Scalar | null): number => add({ kind: 'twin', units: unitsOf(of, 'avg', rows(of, filter), scans), filter, rows: rows(of, filter) })
+  const twin = (of: Scalar, filter: Scalar | null): number => {
+    const units = unitsOf(of, 'avg', rows(of, filter), scans)
+    // twins share out the width between them, so there must be one
+    const low = units.low === units.high ? units.low - 1n : units.low
+    return add({ kind: 'twin', units: { ...units, low }, filter, rows: rows(of, filter) })
+  }
   const hasMean = (of: Scalar, filter: Scalar | null): boolean => aggregates.some(other => other.kind === 'mean' && sameScalar(other.of, of) && sameFilter(other.filter, filter))
   const outputs = aggregates.map((aggregate): Output => {
     switch (aggregate.kind) {

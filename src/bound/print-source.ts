@@ -1,0 +1,162 @@
+import { cast, call, column, constant, integer, logic, operator } from '../catalog/build.ts'
+import { parts, scansOf, type Scalar } from '../catalog/scalar.ts'
+import { listedRows } from '../plan/fan-out.ts'
+import type { ReleasePlan } from '../plan/release-plan.ts'
+import type { Scan, Source } from '../plan/relation.ts'
+import type { Expr, FromItem, Query, Select, Target } from '../sql/tree.ts'
+import { type FixedValues, printOwn, printScalar, scanName } from './print-scalar.ts'
+
+export function target(value: Expr, label: string): Target {
+  return { value, label, at: -1 }
+}
+
+export function selectQuery(select: Partial<Select> & Pick<Select, 'targets' | 'from'>): Query {
+  const body: Select = { kind: 'select', distinct: null, where: null, group: [], groupDistinct: false, having: null, windows: [], ...select }
+  return { kind: 'query', with: null, body, order: [], limit: null, offset: null, withTies: false }
+}
+
+export function subquery(query: Query, alias: string, columns: readonly string[] = []): FromItem {
+  return { kind: 'subquery', query, lateral: false, alias: { name: alias, columns }, at: -1 }
+}
+
+export function allOf(tests: readonly Expr[]): Expr | null {
+  return tests.length === 0 ? null : logic('and', tests)
+}
+
+/** Columns each scan is read for: no other column of a table enters the vault's SQL. */
+export type ReadColumns = ReadonlyMap<number, ReadonlySet<string>>
+
+/** Everything a plan evaluates. */
+export function* scalarsOf(plan: ReleasePlan): Generator<Scalar> {
+  yield* testsIn(plan.owned.source)
+  for (const key of plan.keys) yield key.scalar
+  for (const total of plan.totals) {
+    if (total.filter !== null) yield total.filter
+    if (total.kind === 'rows' && total.of !== null) yield total.of
+    if (total.kind === 'sum' || total.kind === 'twin') yield total.units.value
+  }
+  for (const scan of plan.scans) yield* listedIn(scan)
+}
+
+export function* listedIn(scan: Scan): Generator<Scalar> {
+  if (scan.table.kind !== 'listed') return
+  if (scan.table.source.kind === 'series') yield* scan.table.source.args
+  else for (const row of scan.table.source.rows) yield* row
+}
+
+export function* testsIn(source: Source): Generator<Scalar> {
+  if (source.kind === 'filter') {
+    yield* source.tests
+    yield* testsIn(source.input)
+  }
+  if (source.kind === 'join') {
+    yield* source.on
+    yield* testsIn(source.left)
+    yield* testsIn(source.right)
+  }
+}
+
+export function readColumns(plan: ReleasePlan): ReadColumns {
+  const read = new Map<number, Set<string>>()
+  const add = (scan: number, name: string): void => {
+    const names = read.get(scan) ?? new Set()
+    read.set(scan, names.add(name))
+  }
+  add(plan.owned.person.scan, plan.owned.person.column)
+  for (const index of plan.fanOut.capped.keys()) {
+    const table = plan.scans.find(scan => scan.index === index)?.table
+    if (table?.kind === 'private' && table.owner.kind === 'column') add(index, table.owner.column)
+  }
+  for (const scalar of scalarsOf(plan)) for (const part of parts(scalar)) if (part.node.kind === 'column') add(part.node.scan, part.node.column)
+  return read
+}
+
+export interface PrintedSource {
+  readonly from: FromItem
+  readonly tests: readonly Scalar[]
+}
+
+export interface SourceContext {
+  readonly fixed: FixedValues
+  readonly read: ReadColumns
+  readonly capped: ReadonlyMap<number, bigint>
+  readonly counted: readonly number[]
+  /** Conditions that hold on every row of the relation: one on a capped scan alone is applied before its cap as well. */
+  readonly everywhere: readonly Scalar[]
+}
+
+/** FROM as SQL, and the conditions left for WHERE. A filter below the padded side of a LEFT JOIN moves into its ON, which means the same. */
+export function printSource(source: Source, context: SourceContext): PrintedSource {
+  switch (source.kind) {
+    case 'scan':
+      return { from: printScan(source.scan, context), tests: [] }
+    case 'filter': {
+      const input = printSource(source.input, context)
+      return { from: input.from, tests: [...input.tests, ...source.tests] }
+    }
+    case 'join': {
+      const [left, right] = [printSource(source.left, context), printSource(source.right, context)]
+      const outer = source.type === 'left'
+      const on = [...source.on, ...(outer ? right.tests : [])]
+      const condition = allOf(on.map(test => printScalar(test, context.fixed))) ?? constant({ kind: 'boolean', value: true })
+      return { from: joined(source.type, left.from, right.from, condition), tests: outer ? left.tests : [...left.tests, ...right.tests] }
+    }
+  }
+}
+
+export function joined(type: 'inner' | 'left', left: FromItem, right: FromItem, on: Expr | null): FromItem {
+  return { kind: 'join', type, natural: false, left, right, using: [], usingAlias: null, on, alias: null, at: -1 }
+}
+
+function printScan(scan: Scan, context: SourceContext): FromItem {
+  const alias = scanName(scan.index)
+  const table = scan.table
+  if (table.kind === 'listed') return printListed(table, alias, context)
+  const plain: FromItem = { kind: 'table', name: [table.schema, table.name], only: false, alias: { name: alias, columns: [] }, at: -1 }
+  const cap = context.capped.get(scan.index)
+  const columns = [...(context.read.get(scan.index) ?? [])].sort()
+  if (cap !== undefined) return printCapped(scan, plain, columns, cap, context)
+  if (!context.counted.includes(scan.index)) return plain
+  const limited = selectQuery({ targets: columns.map(name => target(column(alias, name), name)), from: [plain] })
+  return subquery({ ...limited, limit: integer(listedRows) }, alias)
+}
+
+/** The first `cap` rows of each person, in a total order over every column that is read. INVARIANT OWNED (ties): rows that tie are alike. */
+function printCapped(scan: Scan, plain: FromItem, columns: readonly string[], cap: bigint, context: SourceContext): FromItem {
+  const alias = scanName(scan.index)
+  const owner = scan.table.kind === 'private' && scan.table.owner.kind === 'column' ? scan.table.owner.column : ''
+  const tests = context.everywhere.filter(test => {
+    const scans = scansOf(test)
+    return scans.size === 1 && scans.has(scan.index)
+  })
+  const rank = call('row_number', [], {
+    over: {
+      name: '',
+      refers: '',
+      partition: [column(alias, owner)],
+      order: columns.map(name => ({ by: column(alias, name), direction: 'default', using: [], nulls: 'default' })),
+      frame: plainFrame,
+    },
+  })
+  const ranked = selectQuery({
+    targets: [...columns.map(name => target(column(alias, name), name)), target(rank, 'place')],
+    from: [plain],
+    where: allOf(tests.map(test => printScalar(test, context.fixed))),
+  })
+  const kept = selectQuery({ targets: columns.map(name => target(column('ranked', name), name)), from: [subquery(ranked, 'ranked')], where: operator(column('ranked', 'place'), '<=', integer(cap)) })
+  return subquery(kept, alias)
+}
+
+/** FRAMEOPTION_DEFAULTS of PostgreSQL: RANGE UNBOUNDED PRECEDING AND CURRENT ROW, not written out. */
+export const plainFrame = { options: 1058, start: null, end: null } as const
+
+function printListed(table: Extract<Scan['table'], { kind: 'listed' }>, alias: string, context: SourceContext): FromItem {
+  const columns = [...table.columns.keys()]
+  if (table.source.kind === 'series') {
+    const args = table.source.args.map(arg => printOwn(arg, context.fixed))
+    return { kind: 'function', functions: [{ call: call('generate_series', args), definitions: [] }], rowsFrom: false, lateral: false, ordinality: false, alias: { name: alias, columns }, definitions: [], at: -1 }
+  }
+  const types = [...table.columns.values()].map(each => each.type)
+  const rows = table.source.rows.map(row => row.map((value, i) => cast(printOwn(value, context.fixed), types[i]?.name ?? 'text', types[i]?.schema)))
+  return subquery({ kind: 'query', with: null, body: { kind: 'values', rows }, order: [], limit: null, offset: null, withTies: false }, alias, columns)
+}

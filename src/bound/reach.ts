@@ -1,0 +1,32 @@
+import type { Reach } from '../noise/choose.ts'
+import type { ReleasePlan, Total } from '../plan/release-plan.ts'
+
+function size(value: bigint): bigint {
+  return value < 0n ? -value : value
+}
+
+/** What one person moves a total by in one group, in its integer units; for twins the sum of both moves. */
+export function reachOf(total: Total): bigint {
+  switch (total.kind) {
+    case 'rows':
+      return total.rows
+    case 'persons':
+      return 1n
+    case 'sum': {
+      const [low, high] = [size(total.units.low), size(total.units.high)]
+      return total.rows * (low > high ? low : high)
+    }
+    case 'twin':
+      return total.rows * (total.units.high - total.units.low)
+  }
+}
+
+/** Groups one person can touch once the number of listed groups is known. */
+export function groupsTouched(plan: ReleasePlan, listed: bigint | null): bigint {
+  return listed !== null && listed < plan.groupsPerPerson ? listed : plan.groupsPerPerson
+}
+
+/** The sensitivity of every total, in order. by INVARIANT BOUNDED: `bounded-sql.ts` prints the bound these numbers speak of. */
+export function reachesOf(plan: ReleasePlan, groups: bigint): readonly Reach[] {
+  return plan.totals.map(total => ({ groups, each: reachOf(total), coordinates: total.kind === 'twin' ? 2 : 1 }))
+}
