@@ -9,7 +9,9 @@ interface Wire {
   sendCopyFail(message: string): void
 }
 
-/** Backpressure between two connections: COPY … TO STDOUT on one becomes COPY … FROM STDIN on the other, with a socket's buffer in between at most. */
+const batchBytes = 65_536
+
+/** COPY … TO STDOUT on one connection becomes COPY … FROM STDIN on the other, with the sockets' buffers in between at most. Both texts must name text format. */
 export async function copyThrough(from: pg.Client, fromText: string, to: pg.Client, toText: string): Promise<void> {
   const target = new CopyIn(toText)
   to.query(target as unknown as pg.Submittable)
@@ -65,6 +67,10 @@ class CopyIn extends CopyStep {
   readonly #text: string
   #begin!: () => void
   #wire: Wire | null = null
+  /** Rows not sent yet: one message carries many of them. */
+  #chunks: Uint8Array[] = []
+  #size = 0
+  #waiting = false
   constructor(text: string) {
     super()
     this.#text = text
@@ -81,15 +87,28 @@ class CopyIn extends CopyStep {
   }
   /** True while more may come at once; else `resume` is called when it may. */
   write(chunk: Uint8Array, resume: () => void): boolean {
-    const wire = this.#wire
-    if (wire === null) return true
-    wire.sendCopyFromChunk(chunk)
-    if (!wire.stream.writableNeedDrain) return true
-    wire.stream.once('drain', resume)
-    return false
+    // `chunk` is a view of the connection's read buffer, which is used again.
+    this.#chunks.push(Uint8Array.from(chunk))
+    this.#size += chunk.length
+    if (this.#size < batchBytes) return true
+    return this.#flush(resume)
   }
   finish(): void {
+    this.#flush(() => undefined)
     this.#wire?.endCopyFrom()
+  }
+  #flush(resume: () => void): boolean {
+    const wire = this.#wire
+    if (wire !== null && this.#size > 0) wire.sendCopyFromChunk(Buffer.concat(this.#chunks))
+    this.#chunks = []
+    this.#size = 0
+    if (wire === null || !wire.stream.writableNeedDrain) return true
+    if (!this.#waiting) wire.stream.once('drain', () => {
+      this.#waiting = false
+      resume()
+    })
+    this.#waiting = true
+    return false
   }
   fail(): void {
     this.#wire?.sendCopyFail('the source stopped')

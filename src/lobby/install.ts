@@ -52,7 +52,7 @@ async function install(order: LobbyOrder): Promise<LobbyReport> {
   const main = await openInstaller(order.lobbyUrl)
   try {
     const superuser = await isSuperuser(main)
-    await quiet(main, superuser)
+    await quiet(main)
     await refuseVault(order, main)
     const known = await withWatcher(order.lobbyUrl, main, [], noteEnded, () => installRoles(main, order, superuser, warn, noteEnded))
     const created = await createDatabases(main, [...policies.dataSets.keys()])
@@ -85,7 +85,7 @@ async function installOne(order: LobbyOrder, dataSet: string, known: RoleOutcome
   const url = urlOf(order.lobbyUrl, dataSet)
   const lobby = await openInstaller(url)
   try {
-    await quiet(lobby, superuser)
+    await quiet(lobby)
     const vault = await openSession(order.vaultUrl, { DateStyle: 'ISO, MDY', IntervalStyle: 'postgres', TimeZone: 'UTC', extra_float_digits: '3', client_encoding: 'UTF8' })
     try {
       return await withWatcher(url, lobby, known.analysts, ended, () => installDataSet(lobby, vault, definition, order.pull, superuser, warn))
@@ -110,11 +110,12 @@ function openInstaller(url: string): Promise<pg.Client> {
   })
 }
 
-/** The pull port's password and the analysts' verifiers stay out of the server's log. */
-async function quiet(client: pg.Client, superuser: boolean): Promise<void> {
-  if (!superuser) return
-  for (const [setting, value] of [['log_statement', 'none'], ['log_min_duration_statement', '-1'], ['log_min_error_statement', 'panic'], ['log_duration', 'off']] as const) {
-    await client.query(`SET ${setting} = ${value}`)
+/** The pull port's password and the analysts' verifiers stay out of the server's log; a role that may not set this was warned of it. */
+async function quiet(client: pg.Client): Promise<void> {
+  for (const setting of ["log_statement = 'none'", 'log_min_duration_statement = -1', "log_min_error_statement = 'panic'", 'log_duration = off']) {
+    await client.query(`SET ${setting}`).catch((error: unknown) => {
+      if (sqlstateOf(error) !== '42501') throw error
+    })
   }
 }
 

@@ -58,7 +58,9 @@ async function addLabels(client: pg.Client, own: string, old: readonly string[],
   for (const [at, label] of wanted.entries()) {
     if (has.has(label)) continue
     const before = wanted[at - 1]
-    await client.query(`ALTER TYPE ${own} ADD VALUE ${literal(label)} ${before === undefined ? `BEFORE ${literal(old[0] ?? '')}` : `AFTER ${literal(before)}`}`)
+    const first = old[0]
+    const place = before !== undefined ? `AFTER ${literal(before)}` : first !== undefined ? `BEFORE ${literal(first)}` : ''
+    await client.query(`ALTER TYPE ${own} ADD VALUE ${literal(label)} ${place}`)
   }
 }
 

@@ -99,6 +99,14 @@ describe('a pull', () => {
     expect(seen).toEqual(['a1', 'b1', 'a2', 'b2'])
   })
 
+  test('works in a read-only transaction, with a hostile search path and look-alikes in pg_temp', async () => {
+    await ana.query('CREATE TEMP TABLE pg_class (relname text); CREATE TYPE pg_temp.jsonb AS (a int)')
+    await ana.query('SET search_path = pg_temp, public, pg_catalog; SET standard_conforming_strings = off; SET transform_null_equals = on')
+    await ana.query('BEGIN READ ONLY')
+    expect((await ana.query("SELECT hedgerow.pull('x', '[]')::text AS answer")).rows).toEqual([{ answer: '[{"c1": "7"}]' }])
+    await ana.query('ROLLBACK')
+  })
+
   test('is refused where a temporary relation hides a private table', async () => {
     await ana.query('CREATE TEMP TABLE trips (x int)')
     const text = "SELECT hedgerow.pull('x', '[]', '[]', '{riders,trips}')"
@@ -177,14 +185,12 @@ describe('released rows', () => {
       ['bool', [true, false, 't', null]],
       ['uuid', ['a0eebc99-9c0b-4ef8-bb6d-6bb9bd380a11']],
       ['public.mood', ['calm', 'cross']],
-      ['jsonb', ['{"b": [1, 2.50, null]}', '"text"', null]],
     ]
     await ana.query("SET TimeZone = 'UTC'; SET IntervalStyle = 'postgres'")
     for (const [type, list] of values) {
       lobby.pull.answerWith(async () => rows(list.map((c1) => ({ c1 }))))
       const texts = (await ana.query({ text: `SELECT c1::text FROM jsonb_to_recordset(hedgerow.pull('x', '[]')) AS r(c1 ${type})`, rowMode: 'array' })).rows.map((row: unknown[]) => row[0])
       const expected = list.map((value) => (value === true || value === 't' ? 'true' : value === false ? 'false' : value))
-      if (type === 'jsonb') continue
       expect({ type, texts }).toEqual({ type, texts: expected })
     }
   })

@@ -73,13 +73,11 @@ export async function standInPullPort(password: string): Promise<StandInPullPort
         }
         const request = JSON.parse(text.slice(5)) as PullRequest
         requests.push(request)
-        let replied = false
-        ended.signal.addEventListener('abort', () => {
-          if (!replied) aborted += 1
-        })
+        const lost = (): void => void (aborted += 1)
+        ended.signal.addEventListener('abort', lost)
         void answer(request, ended.signal).then(
           (reply) => {
-            replied = true
+            ended.signal.removeEventListener('abort', lost)
             if (!ended.signal.aborted) socket.write(rowOf(JSON.stringify(reply)))
           },
           () => undefined,
