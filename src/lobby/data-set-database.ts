@@ -1,7 +1,7 @@
 import { createHash } from 'node:crypto'
 import type pg from 'pg'
 import type { DataSet } from '../policy/data-set.ts'
-import { closeFunctions } from './closed-functions.ts'
+import { closeFunctions, closeMatching } from './closed-functions.ts'
 import { LobbyProblem } from './problem.ts'
 import { closeShellTexts, dropRelation, stagePublished, swapPublished } from './published.ts'
 import { dblinkFunctions, lobbyFunctions } from './pull-functions.ts'
@@ -21,6 +21,8 @@ export interface PullAddress {
 /** What one data set's database gets: all of it in steps that can be repeated, the last of them one transaction. */
 export async function installDataSet(lobby: pg.Client, vault: pg.Client, dataSet: DataSet, pull: PullAddress, superuser: boolean, warn: (text: string) => void): Promise<readonly string[]> {
   await refuseStrangers(lobby, dataSet)
+  const open = await inTransaction(lobby, 'BEGIN', () => closeFunctions(lobby))
+  if (open.length > 0) warn(`functions that analysts should not have are open to them: have a superuser run in ${dataSet.name}: REVOKE EXECUTE ON FUNCTION ${open.join(', ')} FROM PUBLIC`)
   return inTransaction(vault, 'BEGIN ISOLATION LEVEL REPEATABLE READ READ ONLY', async () => {
     const shape = await readVaultShape(vault, dataSet)
     const plans = planTables(dataSet, shape)
@@ -33,8 +35,6 @@ export async function installDataSet(lobby: pg.Client, vault: pg.Client, dataSet
       await installFunctions(lobby)
       await installTables(lobby, dataSet, plans, published)
       await lobby.query('DROP SCHEMA hedgerow_stage CASCADE')
-      const open = await closeFunctions(lobby)
-      if (open.length > 0) warn(`functions that analysts should not have are open to them: have a superuser run in ${dataSet.name}: REVOKE EXECUTE ON FUNCTION ${open.join(', ')} FROM PUBLIC`)
     })
     return plans.map((plan) => plan.key)
   })
@@ -65,7 +65,7 @@ async function prepare(lobby: pg.Client, dataSet: DataSet, plans: readonly Table
     await lobby.query(`REVOKE ALL ON SCHEMA ${name(schema)} FROM PUBLIC`)
     await lobby.query(`GRANT USAGE, CREATE ON SCHEMA ${name(schema)} TO hedgerow_owner`)
   }
-  for (const schema of [...schemas, 'hedgerow']) await lobby.query(`GRANT USAGE ON SCHEMA ${name(schema)} TO hedgerow_analyst, hedgerow_reader`)
+  for (const schema of [...schemas, 'hedgerow']) await lobby.query(`GRANT USAGE ON SCHEMA ${name(schema)} TO PUBLIC`)
   await lobby.query('REVOKE CREATE ON SCHEMA public FROM PUBLIC')
   await lobby.query('CREATE TABLE IF NOT EXISTS hedgerow_inside.made (key text PRIMARY KEY, kind text NOT NULL, signature text NOT NULL)')
 }
@@ -89,8 +89,8 @@ async function installDblink(lobby: pg.Client, database: string, pull: PullAddre
     throw error
   }
   if (!superuser) return
-  const grants = dblinkFunctions.map((signature) => `GRANT EXECUTE ON FUNCTION hedgerow_inside.${signature} TO hedgerow_owner`)
-  await lobby.query(['REVOKE ALL ON ALL FUNCTIONS IN SCHEMA hedgerow_inside FROM PUBLIC', ...grants].join('; '))
+  await closeMatching(lobby, 'hedgerow_inside', '^dblink')
+  await lobby.query(dblinkFunctions.map((signature) => `GRANT EXECUTE ON FUNCTION hedgerow_inside.${signature} TO hedgerow_owner`).join('; '))
 }
 
 async function installTables(lobby: pg.Client, dataSet: DataSet, plans: readonly TablePlan[], published: readonly TablePlan[]): Promise<void> {
@@ -128,13 +128,13 @@ async function addForeignKeys(lobby: pg.Client, plans: readonly TablePlan[]): Pr
 
 async function grantTable(lobby: pg.Client, plan: TablePlan): Promise<void> {
   const table = qualified(plan.schema, plan.name)
-  await lobby.query(`ALTER TABLE ${table} OWNER TO hedgerow_owner; GRANT SELECT ON ${table} TO hedgerow_analyst, hedgerow_reader`)
+  await lobby.query(`ALTER TABLE ${table} OWNER TO hedgerow_owner; GRANT SELECT ON ${table} TO PUBLIC`)
 }
 
 async function installFunctions(lobby: pg.Client): Promise<void> {
   for (const made of lobbyFunctions) {
-    await lobby.query(`${made.text}; ALTER FUNCTION ${made.signature} OWNER TO hedgerow_owner; REVOKE ALL ON FUNCTION ${made.signature} FROM PUBLIC`)
-    if (made.to !== null) await lobby.query(`GRANT EXECUTE ON FUNCTION ${made.signature} TO ${made.to}`)
+    const grant = made.open ? `GRANT EXECUTE ON FUNCTION ${made.signature} TO PUBLIC` : `REVOKE ALL ON FUNCTION ${made.signature} FROM PUBLIC`
+    await lobby.query(`${made.text}; ALTER FUNCTION ${made.signature} OWNER TO hedgerow_owner; ${grant}`)
   }
   const made = new Map(await rowsOf(lobby, 'SELECT key, signature FROM hedgerow_inside.made') as unknown as [string, string][])
   for (const view of lobbyViews) {
@@ -147,7 +147,7 @@ async function installFunctions(lobby: pg.Client): Promise<void> {
     await lobby.query(text)
     await lobby.query(`COMMENT ON VIEW ${qualified('hedgerow', view.name)} IS ${literal(view.comment)}`)
     await lobby.query(`ALTER VIEW ${qualified('hedgerow', view.name)} OWNER TO hedgerow_owner`)
-    await lobby.query(`GRANT SELECT ON ${qualified('hedgerow', view.name)} TO hedgerow_analyst, hedgerow_reader`)
+    await lobby.query(`GRANT SELECT ON ${qualified('hedgerow', view.name)} TO PUBLIC`)
     await rowsOf(lobby, 'INSERT INTO hedgerow_inside.made VALUES ($1, $2, $3) ON CONFLICT (key) DO UPDATE SET signature = excluded.signature', [key, 'view', signature])
   }
 }

@@ -62,7 +62,9 @@ export async function closeDatabases(client: pg.Client, policies: Policies, anal
     }
   }
   for (const database of policies.dataSets.keys()) await client.query(`GRANT CONNECT ON DATABASE ${name(database)} TO hedgerow_reader`)
-  return (await openDatabases(client)).map((database) => `the database ${database} stays open to every role of the lobby's server: its owner must REVOKE CONNECT ON DATABASE ${name(database)} FROM PUBLIC`)
+  return (await openDatabases(client)).map(
+    (database) => `the database ${database} stays open to every role of the lobby's server: its owner must run REVOKE CONNECT ON DATABASE ${name(database)} FROM PUBLIC`,
+  )
 }
 
 async function openDatabases(client: pg.Client): Promise<readonly string[]> {
@@ -77,7 +79,7 @@ async function openDatabases(client: pg.Client): Promise<readonly string[]> {
 async function otherRoles(client: pg.Client, analysts: readonly string[]): Promise<readonly string[]> {
   const rows = await rowsOf(
     client,
-    `SELECT rolname FROM pg_catalog.pg_roles WHERE rolcanlogin AND NOT rolsuper AND rolname <> ALL ($1::text[]) AND rolname !~ '^hedgerow_(owner|analyst|reader)$'
+    `SELECT rolname FROM pg_catalog.pg_roles WHERE rolcanlogin AND NOT rolsuper AND rolname <> ALL ($1::text[]) AND rolname !~ '^hedgerow_(owner|reader)$'
         AND rolname <> current_user ORDER BY 1`,
     [analysts],
   )
@@ -88,7 +90,7 @@ async function revokeForeignGrants(client: pg.Client, policies: Policies, analys
   const rows = await rowsOf(
     client,
     `SELECT DISTINCT d.datname, r.rolname FROM pg_catalog.pg_database d, LATERAL pg_catalog.aclexplode(d.datacl) a JOIN pg_catalog.pg_roles r ON r.oid = a.grantee
-      WHERE r.rolname = ANY ($1::text[]) OR r.rolname = 'hedgerow_analyst'`,
+      WHERE r.rolname = ANY ($1::text[])`,
     [analysts],
   )
   for (const [database, role] of rows) {

@@ -6,7 +6,7 @@ import { installDataSet, type PullAddress } from './data-set-database.ts'
 import { closeDatabases, createDatabases, setDatabaseDefaults } from './databases.ts'
 import { underPolicyLock } from './policy-lock.ts'
 import { LobbyProblem } from './problem.ts'
-import { defaultLimits, endStrayedSessions, installAnalysts, installGroupRoles, knownAnalysts, type AnalystLimits, type RoleOutcome } from './roles.ts'
+import { defaultLimits, endStrayedSessions, installAnalysts, installOwnRoles, knownAnalysts, type AnalystLimits, type RoleOutcome } from './roles.ts'
 import { inTransaction, openSession, rowsOf, sqlstateOf, urlOf } from './session.ts'
 
 export interface LobbyOrder {
@@ -71,7 +71,7 @@ async function install(order: LobbyOrder): Promise<LobbyReport> {
 }
 
 async function installRoles(main: pg.Client, order: LobbyOrder, superuser: boolean, warn: (text: string) => void, ended: (role: string) => void): Promise<RoleOutcome> {
-  await inTransaction(main, 'BEGIN', () => installGroupRoles(main, superuser))
+  await inTransaction(main, 'BEGIN', () => installOwnRoles(main, superuser))
   const known = await knownAnalysts(main, order.policies)
   await withWatcher(order.lobbyUrl, main, known.analysts, ended, () =>
     againIfRaced(() => inTransaction(main, 'BEGIN', () => installAnalysts(main, order.policies, known, order.limits ?? defaultLimits, superuser, warn))),

@@ -149,12 +149,12 @@ BEGIN
 END
 $scan$`
 
-/** The functions in the order they are made, with their signatures. All are owned by hedgerow_owner. */
+/** The functions in the order they are made; `open` ones an analyst may call. All are owned by hedgerow_owner. */
 export const lobbyFunctions = [
-  { signature: 'hedgerow_inside.hang_up(text)', text: hangUp, to: null },
-  { signature: 'hedgerow_inside.ask(text, text, jsonb, jsonb)', text: ask, to: null },
-  { signature: 'hedgerow_inside.no_scan(text)', text: noScan, to: 'PUBLIC' },
-  { signature: 'hedgerow.pull(text, jsonb, jsonb, text[])', text: pull, to: 'hedgerow_analyst' },
-  { signature: 'hedgerow.explain(text)', text: explain, to: 'hedgerow_analyst' },
-  { signature: 'hedgerow.read(text)', text: read, to: 'hedgerow_analyst' },
+  { signature: 'hedgerow_inside.hang_up(text)', text: hangUp, open: false },
+  { signature: 'hedgerow_inside.ask(text, text, jsonb, jsonb)', text: ask, open: false },
+  { signature: 'hedgerow_inside.no_scan(text)', text: noScan, open: true },
+  { signature: 'hedgerow.pull(text, jsonb, jsonb, text[])', text: pull, open: true },
+  { signature: 'hedgerow.explain(text)', text: explain, open: true },
+  { signature: 'hedgerow.read(text)', text: read, open: true },
 ] as const

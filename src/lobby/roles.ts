@@ -15,11 +15,14 @@ export interface AnalystLimits {
 
 export const defaultLimits: AnalystLimits = { statementTimeout: '5min', tempFileLimit: '2GB', workMem: '16MB', connections: 20 }
 
+/** hedgerow_owner owns shells, copies and functions; as hedgerow_reader Hedgerow sees the names an analyst sees. Nobody logs in as one of them. */
+const ownRoles = ['hedgerow_owner', 'hedgerow_reader'] as const
+
 /**
- * hedgerow_owner owns shells, copies and functions; hedgerow_analyst is what every analyst is a member of; hedgerow_reader is Hedgerow's own view of the
- * names an analyst sees. Nobody logs in as one of them.
+ * The comment that tells an analyst's role from others. It is no membership of a common role: members could drop what such a role was granted, for all.
+ * So a data set's objects are granted to PUBLIC, by INVARIANT OWN DATABASES ONLY.
  */
-const groupRoles = ['hedgerow_owner', 'hedgerow_analyst', 'hedgerow_reader'] as const
+const mark = 'an analyst, kept by Hedgerow'
 
 export interface RoleOutcome {
   /** Every analyst this lobby knows, those that left the policy included. */
@@ -27,9 +30,9 @@ export interface RoleOutcome {
   readonly removed: readonly string[]
 }
 
-/** Makes the three roles of Hedgerow's own, without log-in. */
-export async function installGroupRoles(client: pg.Client, superuser: boolean): Promise<void> {
-  for (const role of groupRoles) {
+/** Makes the two roles of Hedgerow's own, without log-in. */
+export async function installOwnRoles(client: pg.Client, superuser: boolean): Promise<void> {
+  for (const role of ownRoles) {
     const found = await rowsOf(client, 'SELECT FROM pg_catalog.pg_roles WHERE rolname = $1', [role])
     if (found.length === 0) await client.query(`CREATE ROLE ${role} NOLOGIN`)
     await client.query(`ALTER ROLE ${role} NOLOGIN NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}PASSWORD NULL`)
@@ -39,12 +42,8 @@ export async function installGroupRoles(client: pg.Client, superuser: boolean): 
 
 /** Every analyst made by an earlier load, and those of the policy. */
 export async function knownAnalysts(client: pg.Client, policies: Policies): Promise<RoleOutcome> {
-  const members = await rowsOf(
-    client,
-    `SELECT r.rolname FROM pg_catalog.pg_auth_members m JOIN pg_catalog.pg_roles r ON r.oid = m.member
-      WHERE m.roleid = pg_catalog.to_regrole('hedgerow_analyst') AND r.rolname <> current_user ORDER BY 1`,
-  )
-  const made = members.map(([role]) => role ?? '')
+  const marked = await rowsOf(client, "SELECT rolname FROM pg_catalog.pg_roles WHERE pg_catalog.shobj_description(oid, 'pg_authid') = $1 ORDER BY 1", [mark])
+  const made = marked.map(([role]) => role ?? '')
   return { analysts: [...new Set([...made, ...policies.analysts.keys()])], removed: made.filter((role) => !policies.analysts.has(role)) }
 }
 
@@ -58,25 +57,20 @@ export async function installAnalysts(client: pg.Client, policies: Policies, kno
     await createAnalyst(client, analyst.name, superuser)
     await revokeMemberships(client, analyst.name)
     const login = analyst.login === null ? 'NOLOGIN PASSWORD NULL' : `LOGIN PASSWORD ${literal(analyst.login)}`
-    const attributes = `INHERIT NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}CONNECTION LIMIT ${limits.connections} VALID UNTIL 'infinity'`
+    const attributes = `NOINHERIT NOCREATEDB NOCREATEROLE ${superuser ? 'NOSUPERUSER NOREPLICATION NOBYPASSRLS ' : ''}CONNECTION LIMIT ${limits.connections} VALID UNTIL 'infinity'`
     await client.query(`ALTER ROLE ${name(analyst.name)} ${attributes} ${login}`)
     await putBackSettings(client, analyst.name, limits, superuser, warn)
   }
 }
 
 async function createAnalyst(client: pg.Client, role: string, superuser: boolean): Promise<void> {
-  const [found] = await rowsOf(
-    client,
-    `SELECT EXISTS (SELECT FROM pg_catalog.pg_auth_members m WHERE m.member = r.oid AND m.roleid = pg_catalog.to_regrole('hedgerow_analyst')), r.rolname = current_user
-       FROM pg_catalog.pg_roles r WHERE r.rolname = $1`,
-    [role],
-  )
+  const [found] = await rowsOf(client, "SELECT pg_catalog.shobj_description(oid, 'pg_authid') FROM pg_catalog.pg_roles WHERE rolname = $1", [role])
   if (found === undefined) {
     await client.query(`CREATE ROLE ${name(role)} NOLOGIN`)
-    await client.query(`GRANT hedgerow_analyst TO ${name(role)}`)
+    await client.query(`COMMENT ON ROLE ${name(role)} IS ${literal(mark)}`)
     // Who is no superuser ends only sessions of roles it is a member of.
     if (!superuser) await client.query(`GRANT ${name(role)} TO CURRENT_USER`)
-  } else if (found[0] !== 't' || found[1] === 't') {
+  } else if (found[0] !== mark) {
     throw new LobbyProblem(`the lobby's server has a role ${role} that Hedgerow did not make`, `drop that role or give the analyst ${role} another name`)
   }
 }
@@ -85,7 +79,7 @@ async function revokeMemberships(client: pg.Client, role: string): Promise<void>
   const rows = await rowsOf(
     client,
     `SELECT g.rolname, r.rolname FROM pg_catalog.pg_auth_members m JOIN pg_catalog.pg_roles g ON g.oid = m.roleid JOIN pg_catalog.pg_roles r ON r.oid = m.member
-      WHERE (r.rolname = $1 AND g.rolname <> 'hedgerow_analyst') OR (g.rolname = $1 AND r.rolname <> current_user)`,
+      WHERE r.rolname = $1 OR (g.rolname = $1 AND r.rolname <> current_user)`,
     [role],
   )
   for (const [group, member] of rows) await client.query(`REVOKE ${name(group ?? '')} FROM ${name(member ?? '')}`)

@@ -168,6 +168,18 @@ describe('an analyst', () => {
     }
   })
 
+  test('is a member of no role, and takes nothing from others with DROP OWNED', async () => {
+    const bo = await lobby.analyst('bo')
+    expect((await admin.query("SELECT FROM pg_auth_members WHERE member = 'bo'::regrole")).rows).toEqual([])
+    for (const text of ['DROP OWNED BY hedgerow_owner', 'DROP OWNED BY ana', 'SET ROLE hedgerow_owner', 'SET ROLE hedgerow_reader', 'SET SESSION AUTHORIZATION ana']) {
+      expect({ text, code: await failureOf(bo, text) }).toEqual({ text, code: '42501' })
+    }
+    await bo.query('DROP OWNED BY bo')
+    expect(await failureOf(await lobby.analyst('ana'), 'SELECT * FROM piers LIMIT 1')).toBe('no error')
+    await lobby.install()
+    await lobby.analyst('bo')
+  })
+
   test('reaches no large objects, files, advisory locks, log messages, snapshots, text-to-query functions or dblink', async () => {
     const ana = await lobby.analyst('ana')
     for (const call of ["lo_create(0)", "lo_from_bytea(0, '\\x00')", 'lo_creat(-1)', "lo_get(1)", 'lo_open(1, 131072)', 'loread(0, 1)', "lowrite(0, '')", "lo_import('/etc/passwd')", "pg_read_file('PG_VERSION')", "pg_ls_dir('.')", "pg_stat_file('PG_VERSION')",

@@ -47,12 +47,6 @@ describe('a pull', () => {
     expect(Date.parse(request?.statement ?? '')).not.toBeNaN()
   })
 
-  test('speaks for the session user even after SET ROLE', async () => {
-    await ana.query('SET ROLE hedgerow_analyst').catch(() => undefined)
-    await ana.query("SELECT hedgerow.pull('x', '[]')")
-    expect(lobby.pull.requests.map((request) => request.user)).toEqual(['ana'])
-  })
-
   test('raises the reply\'s notice, and its errors with SQLSTATE, message and hint', async () => {
     const notices: (string | undefined)[] = []
     ana.on('notice', (notice) => notices.push(notice.message))
