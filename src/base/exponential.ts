@@ -5,7 +5,7 @@ import { Interval } from './interval.ts'
 import { bitLength, integerSquareRoot } from './significant.ts'
 
 /** Which end of the enclosure a caller wants: the result is never on the wrong side of the true value. */
-export type Side = 'up' | 'down'
+type Side = 'up' | 'down'
 
 /** e^x is not told from 0 below the lower end, where it is enclosed in [0, 2^-2016]; above the upper end it is not asked for. */
 const leastExponent = -1400n
@@ -122,4 +122,3 @@ export function sqrt(x: Fraction, side: Side, bits = 200n): Fraction {
 function scaled(value: bigint, power: bigint): Fraction {
   return power >= 0n ? Fraction.make(value << power) : Fraction.make(value, 1n << -power)
 }
-

@@ -20,7 +20,7 @@ export class Fraction {
   }
 
   /** n / d in lowest terms; a RangeError where d is 0. */
-  static make(n: bigint, d = 1n): Fraction {
+  static make(this: void, n: bigint, d = 1n): Fraction {
     if (d === 0n) throw new RangeError('division by zero')
     if (d < 0n) return Fraction.make(-n, -d)
     if (d === 1n) return new Fraction(n, d)
@@ -29,7 +29,7 @@ export class Fraction {
   }
 
   /** Reads decimal text ('0.1', '-3', '1e-8', '1.5E+30') exactly; a RangeError for anything else. */
-  static parse(text: string): Fraction {
+  static parse(this: void, text: string): Fraction {
     const parts = text.length > textCeiling ? null : /^([+-]?)(\d*)(?:\.(\d*))?(?:[eE]([+-]?\d{1,6}))?$/.exec(text)
     const whole = parts?.[2] ?? ''
     const rest = parts?.[3] ?? ''
@@ -43,7 +43,7 @@ export class Fraction {
   }
 
   /** Reads what toString printed, 'n' or 'n/d'; a RangeError for anything else. */
-  static parseRatio(text: string): Fraction {
+  static parseRatio(this: void, text: string): Fraction {
     const parts = /^(-?\d+)(?:\/(\d+))?$/.exec(text)
     if (parts === null) throw new RangeError('not a ratio of integers')
     return Fraction.make(BigInt(parts[1] ?? ''), BigInt(parts[2] ?? '1'))

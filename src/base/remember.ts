@@ -5,7 +5,11 @@ export function remember<Value>(ceiling: number): (key: string, compute: () => V
     const found = kept.get(key)
     if (found !== undefined) return found.value
     const value = compute()
-    if (kept.size >= ceiling) for (const oldest of kept.keys()) { kept.delete(oldest); break }
+    if (kept.size >= ceiling)
+      for (const oldest of kept.keys()) {
+        kept.delete(oldest)
+        break
+      }
     kept.set(key, { value })
     return value
   }

@@ -5,10 +5,8 @@ import { Fraction } from './fraction.ts'
 export function bitLength(value: bigint): bigint {
   if (value === 0n) return 0n
   const hex = value.toString(16)
-  return BigInt((hex.length - 1) * 4) + headBits[parseInt(hex.charAt(0), 16)]!
+  return BigInt((hex.length - 1) * 4 + parseInt(hex.charAt(0), 16).toString(2).length)
 }
-
-const headBits = [0n, 1n, 2n, 2n, 3n, 3n, 3n, 3n, 4n, 4n, 4n, 4n, 4n, 4n, 4n, 4n] as const
 
 /** The greatest integer whose square is not above `value`, by Newton's iteration from above. */
 export function integerSquareRoot(value: bigint): bigint {
@@ -22,7 +20,7 @@ export function integerSquareRoot(value: bigint): bigint {
   }
 }
 
-/** n / d (d > 0) on a dyadic grid of `bits` significant binary digits, rounded towards the named side. */
+/** n / d (d > 0) on a dyadic grid of `bits` or one more significant binary digits, rounded towards the named side. */
 export function roundRatio(n: bigint, d: bigint, bits: bigint, direction: 'up' | 'down'): Fraction {
   if (n === 0n) return Fraction.zero
   if (n < 0n) return roundRatio(-n, d, bits, direction === 'up' ? 'down' : 'up').neg()
@@ -33,7 +31,7 @@ export function roundRatio(n: bigint, d: bigint, bits: bigint, direction: 'up' |
   return shift >= 0n ? Fraction.make(rounded, 1n << shift) : Fraction.make(rounded << -shift)
 }
 
-/** The value on a dyadic grid of `bits` significant binary digits, rounded towards the named side; unchanged where it lies on the grid. */
+/** The value on a dyadic grid of `bits` or one more significant binary digits, rounded towards the named side; unchanged where it lies on the grid. */
 export function roundSignificant(value: Fraction, bits: bigint, direction: 'up' | 'down'): Fraction {
   return roundRatio(value.n, value.d, bits, direction)
 }

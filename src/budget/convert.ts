@@ -28,7 +28,7 @@ const keptEpsilon = remember<Fraction>(256)
 export function deltaOf(rho: Fraction, epsilon: Fraction): Fraction {
   check(rho.n >= 0n && epsilon.n >= 0n, 'rho and epsilon are not negative')
   if (rho.isZero()) return rho
-  return keptDelta(`${rho} ${epsilon}`, () => computeDelta(rho, epsilon))
+  return keptDelta(`${rho.toString()} ${epsilon.toString()}`, () => computeDelta(rho, epsilon))
 }
 
 function computeDelta(rho: Fraction, epsilon: Fraction): Fraction {
@@ -47,7 +47,7 @@ function computeDelta(rho: Fraction, epsilon: Fraction): Fraction {
 export function rhoCap(epsilon: Fraction, delta: Fraction): Fraction {
   check(epsilon.isPositive() && delta.n >= 0n && delta.add(delta).isLess(one), 'a cap has epsilon > 0 and 0 <= delta < 1/2')
   if (delta.isZero()) return delta
-  return keptRho(`${epsilon} ${delta}`, () => computeRhoCap(epsilon, delta))
+  return keptRho(`${epsilon.toString()} ${delta.toString()}`, () => computeRhoCap(epsilon, delta))
 }
 
 function computeRhoCap(epsilon: Fraction, delta: Fraction): Fraction {
@@ -59,23 +59,35 @@ function computeRhoCap(epsilon: Fraction, delta: Fraction): Fraction {
   })
   check(b !== null, 'a positive delta has a best order')
   const bits = workBits(b, epsilon)
-  return Interval.of(rhoNumerator(epsilon, delta, b, bits).div(Interval.of(b.mul(one.add(b)), bits)).low.max(Fraction.zero), resultBits).low
+  return Interval.of(
+    rhoNumerator(epsilon, delta, b, bits)
+      .div(Interval.of(b.mul(one.add(b)), bits))
+      .low.max(Fraction.zero),
+    resultBits,
+  ).low
 }
 
 function rhoNumerator(epsilon: Fraction, delta: Fraction, b: Fraction, bits: bigint): Interval {
-  return lnInterval(delta, bits).add(Interval.of(b.mul(epsilon), bits)).sub(entropy(b, bits))
+  return lnInterval(delta, bits)
+    .add(Interval.of(b.mul(epsilon), bits))
+    .sub(entropy(b, bits))
 }
 
 /** The least epsilon at which rho-zCDP gives (epsilon, delta)-privacy, rounded up; at least 0. rho >= 0, 0 < delta < 1. */
 export function epsilonOf(rho: Fraction, delta: Fraction): Fraction {
   check(rho.n >= 0n && delta.isPositive() && delta.isLess(one), 'a conversion has rho >= 0 and 0 < delta < 1')
   if (rho.isZero()) return rho
-  return keptEpsilon(`${rho} ${delta}`, () => computeEpsilon(rho, delta))
+  return keptEpsilon(`${rho.toString()} ${delta.toString()}`, () => computeEpsilon(rho, delta))
 }
 
 function computeEpsilon(rho: Fraction, delta: Fraction): Fraction {
   // epsilon = (1+b) rho + (ln(1/delta) + b ln b - (1+b) ln(1+b)) / b rises where b² rho + ln delta + ln(1+b) > 0.
-  const b = leastWhere((x, bits) => Interval.of(x.mul(x).mul(rho), bits).add(lnInterval(delta, bits)).add(lnInterval(one.add(x), bits)).low.isPositive())
+  const b = leastWhere((x, bits) =>
+    Interval.of(x.mul(x).mul(rho), bits)
+      .add(lnInterval(delta, bits))
+      .add(lnInterval(one.add(x), bits))
+      .low.isPositive(),
+  )
   check(b !== null, 'a positive rho has a best order')
   const bits = workBits(b, rho)
   const rest = entropy(b, bits).sub(lnInterval(delta, bits)).div(Interval.of(b, bits))
@@ -85,7 +97,9 @@ function computeEpsilon(rho: Fraction, delta: Fraction): Fraction {
 /** b ln b - (1+b) ln(1+b), which is negative. */
 function entropy(b: Fraction, bits: bigint): Interval {
   const more = one.add(b)
-  return Interval.of(b, bits).mul(lnInterval(b, bits)).sub(Interval.of(more, bits).mul(lnInterval(more, bits)))
+  return Interval.of(b, bits)
+    .mul(lnInterval(b, bits))
+    .sub(Interval.of(more, bits).mul(lnInterval(more, bits)))
 }
 
 /** Bits that survive the cancellation of terms of size b ln b and b * magnitude in a result of at least 2^-|b|. */

@@ -5,7 +5,8 @@ const key = Symbol('debit')
 const turned = new WeakSet<object>()
 
 /**
- * Proof that a release was paid for. INVARIANT DEBITED: made from a ledger's 'debited' outcome only, once for each, and used once; the release step demands one.
+ * Proof that a release was paid for. INVARIANT DEBITED: made from a ledger's 'debited' outcome only, once for each, and used once; the release step demands
+ * one.
  */
 export class Debit {
   readonly #id: string

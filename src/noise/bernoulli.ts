@@ -1,5 +1,4 @@
 import { check } from '../base/check.ts'
-import type { Fraction } from '../base/fraction.ts'
 import type { BitSource } from './bits.ts'
 
 /** True with chance exactly n / d, 0 <= n <= d. */
@@ -18,11 +17,6 @@ export function bernoulliExp(n: bigint, d: bigint, bits: BitSource): boolean {
     if (!bernoulliExpWithinOne(1n, 1n, bits)) return false
   }
   return bernoulliExpWithinOne(n % d, d, bits)
-}
-
-/** bernoulliExp of a fraction. */
-export function bernoulliExpOf(g: Fraction, bits: BitSource): boolean {
-  return bernoulliExp(g.n, g.d, bits)
 }
 
 function bernoulliExpWithinOne(n: bigint, d: bigint, bits: BitSource): boolean {

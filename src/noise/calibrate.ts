@@ -2,7 +2,7 @@ import { check } from '../base/check.ts'
 import { sqrt } from '../base/exponential.ts'
 import { Fraction } from '../base/fraction.ts'
 import { bitLength, roundSignificant } from '../base/significant.ts'
-import { laplaceRho } from './laplace-law.ts'
+import { laplaceRho, pureRho } from './laplace-law.ts'
 import { makeGaussian, makeLaplace, type GaussianMechanism, type LaplaceMechanism } from './make-mechanism.ts'
 
 /** Both parts of a parameter together are kept within this many bits, so that samplers and ledger handle short numbers. */
@@ -11,8 +11,8 @@ const shortBits = 128n
 const convenientBits = 32n
 
 /**
- * The Gaussian mechanism that costs rho at the most for a total of which one person moves the vector over all groups by l2Squared (square units) at the most: the
- * least convenient variance of at least l2Squared / (2 rho) (Bun & Steinke 2016; exact for the discrete law: Canonne, Kamath & Steinke 2020, theorem 4).
+ * The Gaussian mechanism that costs rho at the most for a total of which one person moves the vector over all groups by l2Squared (square units) at the most:
+ * the least convenient variance of at least l2Squared / (2 rho) (Bun & Steinke 2016; exact for the discrete law: Canonne, Kamath & Steinke 2020, theorem 4).
  */
 export function gaussianFor(want: { readonly l2Squared: bigint; readonly rho: Fraction }): GaussianMechanism {
   check(want.l2Squared > 0n && want.rho.isPositive(), 'a Gaussian mechanism needs a sensitivity and a budget')
@@ -29,8 +29,8 @@ export function laplaceFor(want: { readonly l1: bigint; readonly epsilon: Fracti
 }
 
 /**
- * The Laplace mechanism that costs rho at the most for a person who moves up to `groups` coordinates by `each` units at the most, for an account whose pure track is
- * closed: the least scale, to one part in 2^20, whose cost is within rho.
+ * The Laplace mechanism that costs rho at the most for a person who moves up to `groups` coordinates by `each` units at the most, for an account whose pure
+ * track is closed: the least scale, to one part in 2^20, whose cost is within rho.
  */
 export function laplaceForRho(want: { readonly groups: bigint; readonly each: bigint; readonly rho: Fraction }): LaplaceMechanism {
   check(want.groups > 0n && want.each > 0n && want.rho.isPositive(), 'a Laplace mechanism needs a sensitivity and a budget')
@@ -62,7 +62,8 @@ export function epsilonOfLaplace(mechanism: LaplaceMechanism, groups: bigint, ea
 
 /** The same on the rho track: groups times the cost of one coordinate, rounded up, which is never above epsilon tanh(epsilon/2). */
 export function rhoOfLaplace(mechanism: LaplaceMechanism, groups: bigint, each: bigint): Fraction {
-  return laplaceRho(mechanism.scale, each).mul(Fraction.make(groups))
+  const coordinates = laplaceRho(mechanism.scale, each).mul(Fraction.make(groups))
+  return coordinates.min(pureRho(epsilonOfLaplace(mechanism, groups, each)))
 }
 
 /** The value where it is short already, else the next one above that is. */

@@ -3,7 +3,10 @@ import { Fraction } from '../base/fraction.ts'
 import { Interval } from '../base/interval.ts'
 import { normalTail } from './normal-tail.ts'
 
-/** The discrete Gaussian law P(k) = e^(-k²/2v) / Z over the integers (Canonne, Kamath & Steinke 2020), summed where sums are short, bounded where they are long. */
+/**
+ * The discrete Gaussian law P(k) = e^(-k²/2v) / Z over the integers (Canonne, Kamath & Steinke 2020), summed where sums are short, bounded where they
+ * are long.
+ */
 
 const bits = 160n
 const one = Interval.of(Fraction.one, bits)
@@ -62,15 +65,16 @@ export function gaussianSmallestWithTail(v: Fraction, p: Fraction): bigint {
 }
 
 /**
- * Where sums are long: e^(-k²/2v) is convex beyond sigma, so each term is at most the integral over [k - 1/2, k + 1/2] (Hermite-Hadamard); below sigma the midpoint
- * rule errs by at most 1/24 of the integral of |f''|, at most 2 e^(-1/2) / sigma, over Z > sigma sqrt(2 pi): less than 1/(49 v).
+ * Where sums are long: f(k) = e^(-k²/2v) is convex beyond sigma, so each term is at most the integral over [k - 1/2, k + 1/2] (Hermite-Hadamard). Below
+ * sigma the midpoint rule errs by at most 1/8 of the integral of |f''| (the greatest value of its Peano kernel), which is at most 2 e^(-1/2) / sigma;
+ * divided by Z > sigma sqrt(2 pi) that is less than 1/(16 v).
  */
 function boundedTail(v: Fraction, m: bigint): Fraction {
   const edge = Fraction.make(2n * m - 1n, 2n)
   const sigma = sqrtInterval(v, bits)
   const x = Interval.of(edge.div(sigma.high), 64n).low
   const tail = normalTail(x, 64n).high
-  return v.isAtMost(edge.mul(edge)) ? tail : tail.add(Fraction.one.div(v.mul(Fraction.make(49n))))
+  return v.isAtMost(edge.mul(edge)) ? tail : tail.add(Fraction.one.div(v.mul(Fraction.make(16n))))
 }
 
 /** Z = 1 + 2 (e^(-1/2v) + e^(-4/2v) + …). */
@@ -83,8 +87,20 @@ function normaliser(v: Fraction): Interval {
 
 /** The sum of e^(-k²/2v) over k >= m >= 1: the first term in full, the others relative to it in fixed point, rounded both ways. */
 function sumFrom(v: Fraction, m: bigint): Interval {
-  const first = expInterval(Fraction.make(m * m).div(v).mul(half).neg(), bits)
-  const ratio = expInterval(Fraction.make(2n * m + 1n).div(v).mul(half).neg(), bits)
+  const first = expInterval(
+    Fraction.make(m * m)
+      .div(v)
+      .mul(half)
+      .neg(),
+    bits,
+  )
+  const ratio = expInterval(
+    Fraction.make(2n * m + 1n)
+      .div(v)
+      .mul(half)
+      .neg(),
+    bits,
+  )
   const step = expInterval(Fraction.one.div(v).neg(), bits)
   const [unit, p] = [1n << bits, bits]
   const down = (x: Fraction) => (x.n * unit) / x.d

@@ -1,5 +1,5 @@
 import { check } from '../base/check.ts'
-import { Fraction } from '../base/fraction.ts'
+import type { Fraction } from '../base/fraction.ts'
 
 declare const made: unique symbol
 

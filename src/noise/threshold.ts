@@ -7,8 +7,8 @@ import { smallestWithTail } from './mechanism.ts'
 const bits = 160n
 
 /**
- * The smallest T at which the keys that one person alone owns, `groups` of them at the most, show with a chance of delta at most, 0 < delta < 1: a key shows iff
- * its noisy number of persons is at least T. `mechanism` is that of the person count. The chances are independent, so each key may have
+ * The smallest T at which the keys that one person alone owns, `groups` of them at the most, show with a chance of delta at most, 0 < delta < 1: a key shows
+ * iff its noisy number of persons is at least T. `mechanism` is that of the person count. The chances are independent, so each key may have
  * 1 - (1 - delta)^(1/groups), rounded down here.
  */
 export function keyThreshold(mechanism: Mechanism, groups: bigint, delta: Fraction): bigint {

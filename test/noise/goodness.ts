@@ -1,5 +1,9 @@
 /** Chi-square of draws against an exact law on the integers: one cell for each k with |k| <= reach, one for either tail. */
-export function chiSquare(draws: readonly bigint[], probability: (k: number) => number, reach: number): { readonly statistic: number; readonly critical: number } {
+export function chiSquare(
+  draws: readonly bigint[],
+  probability: (k: number) => number,
+  reach: number,
+): { readonly statistic: number; readonly critical: number } {
   const counts = new Array<number>(2 * reach + 3).fill(0)
   for (const draw of draws) {
     const k = Math.max(-reach - 1, Math.min(reach + 1, Number(draw)))

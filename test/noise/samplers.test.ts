@@ -7,7 +7,7 @@ import { drawDiscreteLaplace } from '../../src/noise/discrete-laplace.ts'
 import { chiSquare } from './goodness.ts'
 import { givenBytes, seededBytes } from './seeded-bytes.ts'
 
-const draws = 30_000
+const draws = 20_000
 
 function many(seed: string, sample: (bits: BitSource) => bigint): readonly bigint[] {
   const bits = new BitSource(seededBytes(seed))
@@ -145,9 +145,17 @@ describe('discrete Gaussian noise', () => {
 
   test('of an off parameter, or of plain Laplace shape, would be caught', () => {
     const law = gaussianLaw(6.25)
-    const wide = chiSquare(many('gaussian fault', (bits) => drawDiscreteGaussian(Fraction.make(27n, 4n), bits)), law, 8)
+    const wide = chiSquare(
+      many('gaussian fault', (bits) => drawDiscreteGaussian(Fraction.make(27n, 4n), bits)),
+      law,
+      8,
+    )
     expect(wide.statistic).toBeGreaterThan(wide.critical)
-    const shape = chiSquare(many('gaussian shape', (bits) => drawDiscreteLaplace(Fraction.make(9n, 5n), bits)), law, 8)
+    const shape = chiSquare(
+      many('gaussian shape', (bits) => drawDiscreteLaplace(Fraction.make(9n, 5n), bits)),
+      law,
+      8,
+    )
     expect(shape.statistic).toBeGreaterThan(shape.critical)
   })
 
