@@ -13,13 +13,12 @@ export interface BlockTypes {
   readonly columns: readonly ColumnDefinition[]
 }
 
-/** The block's own text, its parameters cast to what they were described as, so that it means the same wherever it is planned again. */
+/** The block's own text, its parameters cast to what they were described as (not yet described: left open), so that it means the same wherever it is planned again. */
 export function blockText(block: CutBlock, types: BlockTypes): string {
   const expr = (e: Expr): Expr => {
     if (e.kind !== 'parameter') return mapExpr(e, expr, inner)
     const type = types.parameters[e.number - 1]
-    check(type !== undefined, 'every parameter of a block is described')
-    return { kind: 'cast', arg: e, type, at: -1 }
+    return type === undefined ? e : { kind: 'cast', arg: e, type, at: -1 }
   }
   const inner = (q: Query): Query => mapQuery(q, { expr, query: inner })
   return printQuery(inner(block.query))

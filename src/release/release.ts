@@ -6,6 +6,8 @@ import type { Mechanism } from '../noise/make-mechanism.ts'
 import { draw } from '../noise/mechanism.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import { type ExactRow, type ExactTable, openExact } from './exact.ts'
+
+export type { ExactTable } from './exact.ts'
 import { type Noisy, show, type ShowOptions } from './outputs.ts'
 
 export type KeyTexts = readonly (string | null)[]
