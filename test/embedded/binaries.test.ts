@@ -7,9 +7,9 @@ import { serverAccount } from '../../src/embedded/account.ts'
 import { packagedBinaries, runnableBinaries } from '../../src/embedded/binaries.ts'
 import { scratchDirectory } from '../harness/server.ts'
 import { gone, launch, writeLauncher } from './launched.ts'
+import { lightSettings } from './made-state.ts'
 
 const root = process.getuid?.() === 0
-const settings = { fsync: 'off', shared_buffers: '16MB', io_method: 'sync' }
 
 let scratch: ReturnType<typeof scratchDirectory>
 
@@ -69,7 +69,7 @@ describe.runIf(root)('a server started by an unprivileged account', () => {
     chownSync(home, account.uid, account.gid)
     const { child, url, pid } = await launch(
       launcher,
-      { directory: join(home, 'state'), settings, native },
+      { directory: join(home, 'state'), settings: lightSettings, native },
       { ...account, env: { HOME: home, PATH: process.env['PATH'] } },
     )
     const client = new pg.Client({ connectionString: url })
@@ -90,7 +90,7 @@ describe.runIf(root)('a server started by an unprivileged account', () => {
     mkdirSync(join(scratch.path, 'state'), { mode: 0o755 })
     mkdirSync(join(scratch.path, 'state', 'postgresql'), { mode: 0o700 })
     await expect(
-      launch(launcher, { directory: join(scratch.path, 'state'), settings, native: packagedBinaries() }, { uid: 65534, gid: 65534 }),
+      launch(launcher, { directory: join(scratch.path, 'state'), settings: lightSettings, native: packagedBinaries() }, { uid: 65534, gid: 65534 }),
     ).rejects.toThrow(/belongs to another account: start as its owner/)
   })
 })

@@ -5,19 +5,29 @@ import type { AddressInfo } from 'node:net'
 import { networkInterfaces } from 'node:os'
 import { join } from 'node:path'
 import pg from 'pg'
-import { afterEach, beforeEach, describe, expect, test } from 'vitest'
+import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, test } from 'vitest'
 import { startServer } from '../../src/embedded/server.ts'
 import type { EmbeddedServer, EmbeddedServerOptions } from '../../src/embedded/server.ts'
 import { scratchDirectory } from '../harness/server.ts'
 import { gone, running } from './launched.ts'
+import { lightSettings, makeState } from './made-state.ts'
+import type { MadeState } from './made-state.ts'
 
-const settings = { fsync: 'off', shared_buffers: '16MB', io_method: 'sync' }
-
+let made: MadeState
 let scratch: ReturnType<typeof scratchDirectory>
+let directory: string
 let started: EmbeddedServer[]
+
+beforeAll(async () => {
+  made = await makeState()
+})
+
+afterAll(() => made.remove())
 
 beforeEach(() => {
   scratch = scratchDirectory('hedgerow-embedded')
+  directory = join(scratch.path, 'state')
+  made.copyTo(directory)
   started = []
 })
 
@@ -27,7 +37,7 @@ afterEach(async () => {
 })
 
 async function start(more: Partial<EmbeddedServerOptions> = {}): Promise<EmbeddedServer> {
-  const server = await startServer({ directory: scratch.path, settings, ...more })
+  const server = await startServer({ directory, settings: lightSettings, ...more })
   started.push(server)
   return server
 }
@@ -69,9 +79,10 @@ describe('a started server', () => {
     await expect(rows(wrong.href, 'SELECT 1')).rejects.toThrow(/password authentication failed/)
   })
 
-  test('keeps its data and its password to its owner', async () => {
+  test('keeps its data and its password to its owner, from the first start', async () => {
+    directory = join(scratch.path, 'fresh')
     await start()
-    const home = join(scratch.path, 'postgresql')
+    const home = join(directory, 'postgresql')
     const modes = (path: string): number => statSync(path).mode & 0o777
     expect(modes(home)).toBe(0o700)
     expect(modes(join(home, 'data'))).toBe(0o700)
@@ -88,7 +99,7 @@ describe('a started server', () => {
   test('does not run as root', async () => {
     const server = await start()
     if (process.platform === 'linux') expect(readFileSync(`/proc/${server.pid}/status`, 'utf8')).not.toMatch(/^Uid:.*\b0\b/m)
-    expect(statSync(join(scratch.path, 'postgresql', 'data')).uid).not.toBe(0)
+    expect(statSync(join(directory, 'postgresql', 'data')).uid).not.toBe(0)
   })
 
   test('stops when told, also twice, and says so', async () => {
@@ -114,7 +125,7 @@ describe('a started server', () => {
     const first = await start()
     await rows(first.url(), 'CREATE TABLE kept AS SELECT 7 AS n')
     await first.stop()
-    const second = await start({ settings: { ...settings, max_connections: '23' } })
+    const second = await start({ settings: { ...lightSettings, max_connections: '23' } })
     expect(await rows(second.url(), "SELECT n, current_setting('max_connections') AS most FROM kept")).toEqual([{ n: 7, most: '23' }])
     expect(new URL(second.url()).password).toBe(new URL(first.url()).password)
   })
@@ -151,13 +162,13 @@ describe('a start that cannot succeed', () => {
 
   test('does not touch data of another PostgreSQL version', async () => {
     await (await start()).stop()
-    writeFileSync(join(scratch.path, 'postgresql', 'data', 'PG_VERSION'), '12\n')
+    writeFileSync(join(directory, 'postgresql', 'data', 'PG_VERSION'), '12\n')
     await expect(start()).rejects.toThrow(/is of PostgreSQL 12, the installed one is 18/)
   })
 
   test('does not make a new password for data whose password is gone', async () => {
     await (await start()).stop()
-    rmSync(join(scratch.path, 'postgresql', 'password'))
+    rmSync(join(directory, 'postgresql', 'password'))
     await expect(start()).rejects.toThrow(/the password file .* is gone/)
   })
 

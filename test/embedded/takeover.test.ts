@@ -1,25 +1,33 @@
 import { spawn } from 'node:child_process'
 import { once } from 'node:events'
-import { chownSync, cpSync, mkdirSync, readdirSync, readFileSync, statSync, writeFileSync } from 'node:fs'
+import { chownSync, cpSync, mkdirSync, readdirSync, readFileSync, rmSync, statSync, writeFileSync } from 'node:fs'
 import { dirname, join } from 'node:path'
 import pg from 'pg'
-import { afterEach, beforeEach, describe, expect, test } from 'vitest'
+import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, test } from 'vitest'
 import { packagedBinaries } from '../../src/embedded/binaries.ts'
 import { startServer } from '../../src/embedded/server.ts'
 import type { EmbeddedServerOptions } from '../../src/embedded/server.ts'
 import { scratchDirectory } from '../harness/server.ts'
 import { endLaunched, gone, launch, running, writeLauncher } from './launched.ts'
 import type { Launched } from './launched.ts'
+import { lightSettings, makeState } from './made-state.ts'
+import type { MadeState } from './made-state.ts'
 
-const settings = { fsync: 'off', shared_buffers: '16MB', io_method: 'sync' }
-
+let made: MadeState
 let scratch: ReturnType<typeof scratchDirectory>
 let launcher: string
 const launches: Launched[] = []
 
+beforeAll(async () => {
+  made = await makeState()
+})
+
+afterAll(() => made.remove())
+
 beforeEach(() => {
   scratch = scratchDirectory('hedgerow-takeover')
   launcher = writeLauncher(scratch.path)
+  made.copyTo(options().directory)
 })
 
 afterEach(async () => {
@@ -37,7 +45,7 @@ async function launchOne(): Promise<Launched> {
 }
 
 function options(): EmbeddedServerOptions {
-  return { directory: join(scratch.path, 'state'), settings, native: packagedBinaries() }
+  return { directory: join(scratch.path, 'state'), settings: lightSettings, native: packagedBinaries() }
 }
 
 async function query(url: string, sql: string): Promise<unknown[]> {
@@ -118,7 +126,6 @@ describe('what a killed process left behind', () => {
     ['a process that is gone', dead],
     ['a living process that is no PostgreSQL', async () => sleeper()],
   ])('a pid file of %s is no obstacle', async (_, other) => {
-    await (await startServer(options())).stop()
     const { pid, end } = await other()
     const data = join(options().directory, 'postgresql', 'data')
     writeFileSync(join(data, 'postmaster.pid'), `${pid}\n${data}\n1780000000\n5432\n\n127.0.0.1\n\nready\n`)
@@ -133,6 +140,7 @@ describe('what a killed process left behind', () => {
 
   test('half a data directory is made anew', async () => {
     const home = join(options().directory, 'postgresql')
+    rmSync(options().directory, { recursive: true })
     mkdirSync(join(home, 'data.new'), { recursive: true })
     writeFileSync(join(home, 'data.new', 'PG_VERSION'), '18\n')
     const server = await startServer(options())
@@ -147,7 +155,6 @@ describe('what a killed process left behind', () => {
   })
 
   test('a copy of a data directory is another directory: the running one is left alone', async () => {
-    await (await startServer(options())).stop()
     const { url } = await launchOne()
     const copy = join(scratch.path, 'copy', 'postgresql')
     cpSync(join(options().directory, 'postgresql'), copy, { recursive: true, filter: (name) => !name.includes('holder.') })
