@@ -17,7 +17,7 @@ export interface Reach {
 
 export type Wish = 'auto' | 'laplace' | 'gaussian'
 
-/** What the release may spend: epsilon on the pure track, or rho on the other. Not both null and 0. */
+/** What the release may spend: epsilon on the pure track, or rho on the other. */
 export interface ReleaseBudget {
   /** Null where the account's pure track is closed: Laplace noise then costs rho as well. */
   readonly epsilon: Fraction | null
@@ -47,11 +47,12 @@ export interface Choice extends Candidate {
 
 /**
  * The mechanisms for one release's totals. The budget is split equally over the totals, which is best for equal relative accuracy under either law (minimise
- * the sum of variance / each² by Lagrange), and 'auto' takes the law with the least such sum. INVARIANT CALIBRATED. Null where the wish is
- * Gaussian and the account has no rho to spend.
+ * the sum of variance / each² by Lagrange), and 'auto' takes the law with the least such sum. INVARIANT CALIBRATED. Null where the account
+ * can pay for no such law: Gaussian without rho, or any with the pure track closed and no rho.
  */
 export function choose(reaches: readonly Reach[], budget: ReleaseBudget, wish: Wish): Choice | null {
-  check(reaches.length > 0 && (budget.epsilon ?? budget.rho).isPositive(), 'a release has totals and a budget')
+  check(reaches.length > 0 && budget.epsilon?.isPositive() !== false && budget.rho.n >= 0n, 'a release has totals and a budget')
+  if (budget.epsilon === null && !budget.rho.isPositive()) return null
   const totals = reaches.map((reach) => ({ ...reach, each: reach.each === 0n ? 1n : reach.each }))
   const laplace = laplaceCandidate(totals, budget)
   const gaussian = budget.rho.isPositive() ? gaussianCandidate(totals, budget.rho) : null

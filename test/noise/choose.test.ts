@@ -91,9 +91,13 @@ describe('the choice of noise', () => {
     expect(choose([count], { epsilon: null, rho: parse('0.01') }, 'auto')?.kind).toBe('gaussian')
   })
 
+  test('finds no law where the pure track is closed and there is no rho either', () => {
+    for (const wish of ['auto', 'laplace', 'gaussian'] as const) expect(choose([count], { epsilon: null, rho: Fraction.zero }, wish)).toBeNull()
+  })
+
   test('needs totals and a budget', () => {
     expect(() => choose([], { epsilon: parse('1'), rho: parse('1') }, 'auto')).toThrow(BrokenCheck)
-    expect(() => choose([count], { epsilon: null, rho: Fraction.zero }, 'auto')).toThrow(BrokenCheck)
+    expect(() => choose([count], { epsilon: Fraction.zero, rho: parse('1') }, 'auto')).toThrow(BrokenCheck)
   })
 })
 

@@ -65,12 +65,12 @@ describe('the discrete Gaussian law', () => {
     expect(margin(mechanism, confidence)).toBe(half)
   })
 
-  test('is bounded as tightly where it is not summed: sums and bounds meet within one part in a thousand', () => {
+  test('is bounded as tightly where it is not summed: sums and bounds meet within one part in five hundred, far tails in two hundred', () => {
     const [summed, bounded] = [makeGaussian(Fraction.make(400n)), makeGaussian(Fraction.make(400n).add(Fraction.parse('1e-20')))]
     for (const m of [1n, 10n, 20n, 40n, 100n]) {
       const [exact, bound] = [tailAtLeast(summed, m), tailAtLeast(bounded, m)]
       expect(exact.isAtMost(bound)).toBe(true)
-      expect(bound.toApproximate() / exact.toApproximate() - 1).toBeLessThan(m > 40n ? 5e-3 : 1e-3)
+      expect(bound.toApproximate() / exact.toApproximate() - 1).toBeLessThan(m > 40n ? 5e-3 : 2e-3)
     }
     expectJustAbove(tailAtLeast(summed, -3n).add(tailAtLeast(summed, 4n)), '1')
     const whole = tailAtLeast(bounded, -3n).add(tailAtLeast(bounded, 4n)).toApproximate()
