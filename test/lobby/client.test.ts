@@ -14,7 +14,7 @@ const policies: Policies = { ...whole, dataSets: new Map([...whole.dataSets].fil
 beforeAll(async () => {
   lobby = await ferryLobby()
   const admin = await lobby.admin('postgres')
-  await admin.query("CREATE ROLE porter LOGIN CREATEROLE CREATEDB PASSWORD 'keys'")
+  await admin.query("CREATE ROLE porter LOGIN CREATEROLE CREATEDB PASSWORD 'keys'; GRANT CONNECT ON DATABASE postgres TO porter")
   const url = new URL(lobby.url('postgres'))
   url.username = 'porter'
   url.password = 'keys'
@@ -35,7 +35,6 @@ describe('a lobby made by a role with CREATEROLE and CREATEDB', () => {
     for (const part of ['GRANT SET ON PARAMETER temp_file_limit', 'pg_advisory_lock(bigint)', 'REVOKE CONNECT ON DATABASE "ferry_ledger" FROM PUBLIC']) expect(warnings).toContain(part)
     await admin.query(/have a superuser run in ferries: (.*)/.exec(warnings)?.[1] ?? '')
     for (const database of ['postgres', 'template1', 'template0', 'ferry_vault', 'ferry_ledger']) await admin.query(`REVOKE CONNECT, TEMPORARY ON DATABASE ${database} FROM PUBLIC`)
-    await admin.query('GRANT CONNECT ON DATABASE postgres TO porter')
     for (const [, parameter] of warnings.matchAll(/GRANT SET ON PARAMETER (\S+)/g)) await admin.query(`GRANT SET ON PARAMETER ${parameter} TO porter`)
     expect((await lobby.install({ lobbyUrl, policies })).warnings).toEqual([])
   })

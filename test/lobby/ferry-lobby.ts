@@ -40,7 +40,12 @@ export async function ferryLobby(): Promise<FerryLobby> {
   }
   const admin = (database: string): Promise<pg.Client> => connect({ connectionString: url(database) })
   const maintenance = await admin('postgres')
+  // On a server of one's own that outlives the run: one file at a time, and nothing of the last one left.
+  await maintenance.query('SELECT pg_advisory_lock(4711)')
   for (const database of ['ferries', 'harbours', 'ferry_vault', 'ferry_ledger']) await maintenance.query(`DROP DATABASE IF EXISTS ${database} WITH (FORCE)`)
+  for (const role of ['ana', 'bo', 'cy', 'porter', 'hedgerow_owner', 'hedgerow_reader']) {
+    await maintenance.query(`DO $$ BEGIN IF to_regrole('${role}') IS NOT NULL THEN EXECUTE 'DROP OWNED BY ${role}'; EXECUTE 'DROP ROLE ${role}'; END IF; END $$`)
+  }
   for (const database of ['ferry_vault', 'ferry_ledger']) await maintenance.query(`CREATE DATABASE ${database} TEMPLATE template0 ENCODING 'UTF8'`)
   const vault = await admin('ferry_vault')
   await vault.query(vaultText)
