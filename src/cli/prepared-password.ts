@@ -19,10 +19,11 @@ const mostLength = 512
  */
 export function preparedPassword(typed: string): Prepared {
   if (typed.length > mostLength) return { kind: 'unfit', why: `the password is longer than ${mostLength} characters` }
-  const password = typed.replace(otherSpaces, ' ').replace(mappedToNothing, '').normalize('NFKC')
+  const mapped = typed.replace(otherSpaces, ' ').replace(mappedToNothing, '')
+  const password = mapped.normalize('NFKC')
   if (password === '') return { kind: 'unfit', why: 'the password is empty' }
   if (prohibited.test(password)) return { kind: 'unfit', why: 'the password holds a control character or a character that cannot be typed alike everywhere' }
-  if (password !== typed && (!settled.test(typed) || /[\u{10000}-\u{10ffff}]/u.test(typed))) return { kind: 'unfit', why: 'the password holds characters that clients may prepare in different ways' }
+  if (password !== typed && (!settled.test(mapped) || /[\u{10000}-\u{10ffff}]/u.test(mapped))) return { kind: 'unfit', why: 'the password holds characters that clients may prepare in different ways' }
   return { kind: 'prepared', password }
 }
 

@@ -1,5 +1,3 @@
-import { open, readdir } from 'node:fs/promises'
-import { join } from 'node:path'
 import type { Catalog } from '../catalog/catalog.ts'
 import { assemble, complainOfCaps, complainOfTwins } from '../policy/assemble.ts'
 import { Findings } from '../policy/complaint.ts'
@@ -8,7 +6,7 @@ import type { DataSet, Policies } from '../policy/data-set.ts'
 import { fit } from '../policy/fit.ts'
 import { isAnalystsText, readAnalystsFile, readDataSetFile, schemasOf } from '../policy/read.ts'
 import type { DraftAnalysts, DraftDataSet } from '../policy/read.ts'
-import { fileCeiling } from '../policy/yaml-text.ts'
+import { policyTexts } from './policy-texts.ts'
 
 /** Reads the vault's catalogue for some schemas. */
 export interface CatalogOf {
@@ -53,45 +51,6 @@ export async function loadPolicies(directory: string, catalogOf: CatalogOf): Pro
   const policies = assemble(fitted, draftAnalysts)
   findings.take(policies)
   return findings.outcome(() => (policies.kind === 'fits' ? policies.value : nothing()))
-}
-
-/** The policy files of a directory in the order of their names; what cannot be read is complained of. */
-async function policyTexts(directory: string, findings: Findings): Promise<readonly { readonly file: string; readonly text: string }[]> {
-  const texts: { file: string; text: string }[] = []
-  let names: readonly string[]
-  try {
-    names = (await readdir(directory)).filter((name) => /\.ya?ml$/.test(name) && !name.startsWith('.')).toSorted()
-  } catch (error) {
-    findings.complain({ file: directory, line: 1, column: 1 }, `the directory cannot be read (${codeOf(error)})`, 'set HEDGEROW_POLICIES to the directory of the policies')
-    return []
-  }
-  for (const name of names) {
-    const file = join(directory, name)
-    try {
-      texts.push({ file, text: await boundedText(file) })
-    } catch (error) {
-      const place = { file, line: 1, column: 1 }
-      if (error instanceof TypeError) findings.complain(place, 'the file is not UTF-8', 'save it as UTF-8')
-      else findings.complain(place, `the file cannot be read (${codeOf(error)})`, 'check its owner and mode')
-    }
-  }
-  return texts
-}
-
-/** At most one byte more than a policy may have: what is longer is complained of by its reader, and never held in memory. */
-async function boundedText(file: string): Promise<string> {
-  const handle = await open(file, 'r')
-  try {
-    const { buffer, bytesRead } = await handle.read(Buffer.alloc(fileCeiling + 4), 0, fileCeiling + 4, 0)
-    const bytes = buffer.subarray(0, bytesRead)
-    return bytesRead > fileCeiling ? bytes.toString('latin1') : new TextDecoder('utf-8', { fatal: true }).decode(bytes)
-  } finally {
-    await handle.close()
-  }
-}
-
-function codeOf(error: unknown): string {
-  return error instanceof Error && 'code' in error ? String(error.code) : 'unknown'
 }
 
 function nothing(): never {

@@ -45,7 +45,7 @@ function complain(findings: Findings, yaml: YamlText, schema: z.ZodType, issue: 
       return
     }
     default: {
-      const shown = typeof value === 'string' ? `${name}: ${value.slice(0, 80)}` : name
+      const shown = typeof value === 'string' && field.meta()?.secret !== true ? `${name}: ${value.slice(0, 80)}` : name
       if (value === undefined) findings.complain(yaml.place(path), `${name} is missing`, remedy)
       else findings.complain(yaml.place(path), `${shown} ${issue.message}`, remedy)
     }

@@ -10,6 +10,8 @@ import { isVerifier } from './verifier.ts'
 declare module 'zod' {
   interface GlobalMeta {
     remedy?: string
+    /** The value is not repeated in complaints. */
+    secret?: boolean
     json?: Readonly<Record<string, unknown>>
   }
 }
@@ -26,9 +28,9 @@ export const epsilon = amount
 export const delta = amount
   .refine((text) => {
     const value = readDecimal(text)
-    return value === null || (value.units >= 0n && value.units < 10n ** BigInt(value.scale))
-  }, 'must be 0 or more and less than 1')
-  .meta({ description: 'The probability with which the bound may fail: 0 or more, far less than 1.', remedy: 'write a number such as 1e-8, or 0', json: { type: 'number', minimum: 0, exclusiveMaximum: 1 } })
+    return value === null || (value.units >= 0n && 2n * value.units < 10n ** BigInt(value.scale))
+  }, 'must be 0 or more and less than 0.5')
+  .meta({ description: 'The probability with which the bound may fail: 0 or more, far less than 0.5.', remedy: 'write a number such as 1e-8, or 0', json: { type: 'number', minimum: 0, exclusiveMaximum: 0.5 } })
 
 /** A literal of a column's type: checked against the column by the fit. */
 export const literal = z.string().max(4096, 'is longer than 4096 characters').meta({ remedy: 'write one plain value', json: { type: ['string', 'number', 'boolean'] } })
@@ -96,6 +98,6 @@ export const verifier = z
   .string()
   .refine(isVerifier, 'is not a SCRAM-SHA-256 verifier')
   .nullable()
-  .meta({ description: 'A PostgreSQL SCRAM-SHA-256 verifier; `hedgerow password NAME` writes it.', remedy: 'remove it and run: hedgerow password NAME', json: { type: ['string', 'null'], pattern: '^SCRAM-SHA-256\\$' } })
+  .meta({ description: 'A PostgreSQL SCRAM-SHA-256 verifier; `hedgerow password NAME` writes it.', secret: true, remedy: 'remove it and run: hedgerow password NAME', json: { type: ['string', 'null'], pattern: '^SCRAM-SHA-256\\$' } })
 
 export const renews = z.enum(['never', 'month', 'quarter', 'year'], 'is not a renewal period').meta({ remedy: 'write one of never, month, quarter, year' })

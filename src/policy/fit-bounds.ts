@@ -10,7 +10,7 @@ export const productCeiling = 1_000_000_000
 
 /**
  * A private table's bounds as declared. Where a row is proved to be the person's only one, both are 1 whatever is declared. A table owned through
- * another takes that table's bounds where it declares none: bounds are enforced on every answer, so any number is sound.
+ * another takes that table's bounds where it declares none: bounds are enforced on every answer, so any number is sound. A way to the person that could not be made out is complained of elsewhere.
  */
 export function fitBounds(draft: DraftDataSet, tables: Schemed, owners: ReadonlyMap<string, Owner>, key: string, onePerPerson: boolean, findings: Findings): Bounds {
   const listed = tables.owned.get(key)
@@ -26,6 +26,7 @@ export function fitBounds(draft: DraftDataSet, tables: Schemed, owners: Readonly
     const owner = owners.get(key)
     const next = owner?.kind === 'through' ? owner.steps[0]?.table : undefined
     if (next !== undefined) return inherited(draft, tables, owners, next)
+    if (typeof listed.declared.person !== 'string') return { groups: 1, rows: 1 }
     findings.complain(draft.keyPlace(path), `tables.${listed.listedAs}: bounds is missing`, 'write bounds: { groups: 12, rows: 20 }: the groups a person may touch, and the rows in each')
     return { groups: 1, rows: 1 }
   }

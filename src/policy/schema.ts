@@ -8,14 +8,14 @@ export const choices = new WeakMap<object, (value: unknown) => number>()
 
 const pair = z
   .array(literal)
-  .length(2, 'is not a list of two values, the least and the greatest')
+  .refine((ends) => ends.length === 2, 'is not a list of two values, the least and the greatest')
   .meta({ description: 'Values outside are moved to the nearer end.', remedy: 'write clamp: [0, 2500]', json: { type: 'array', items: { type: ['string', 'number'] }, minItems: 2, maxItems: 2 } })
 
 const column = z
   .strictObject({
     clamp: pair.optional(),
     step: step.optional(),
-    values: z.array(literal).min(1, 'lists no value').meta({ description: 'Every value that may be shown as a group, whether or not it occurs.', remedy: 'write values: [Northbank, Eastquay]' }).optional(),
+    values: z.array(literal).refine((list) => list.length > 0, 'lists no value').meta({ description: 'Every value that may be shown as a group, whether or not it occurs.', remedy: 'write values: [Northbank, Eastquay]', json: { type: 'array', items: { type: ['string', 'number', 'boolean'] }, minItems: 1 } }).optional(),
     values_from: columnReference.meta({ description: 'A column of a published table that lists the values.', remedy: 'write values_from: piers.pier_id' }).optional(),
     also_identifies: z.literal('accepted', 'can only be accepted').meta({ description: 'The column refers to a second person, who is not protected by this row.', remedy: 'write also_identifies: accepted, or leave the column out' }).optional(),
   })

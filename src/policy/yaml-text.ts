@@ -1,4 +1,4 @@
-import { LineCounter, isAlias, isMap, isScalar, isSeq, parseDocument } from 'yaml'
+import { isAlias, isMap, isScalar, isSeq, parseDocument } from 'yaml'
 import type { Document, ParsedNode } from 'yaml'
 import { Findings } from './complaint.ts'
 import type { Outcome, Place } from './complaint.ts'
@@ -41,16 +41,12 @@ export function readYaml(text: string, file: string): Outcome<YamlText> {
     findings.complain(start, `the file is longer than ${fileCeiling} bytes`, 'divide it into several data sets, or move long value lists into a published table and use values_from')
     return findings.outcome(() => unreadable(file))
   }
-  const lines = new LineCounter()
-  const placeOf = (offset: number): Place => {
-    const { line, col } = lines.linePos(offset)
-    return { file, line: Math.max(line, 1), column: Math.max(col, 1) }
-  }
+  const placeOf = placesIn(text, file)
   if (deepestNesting(text) > depthCeiling) {
     findings.complain(start, `brackets or lines nest more than ${depthCeiling} deep`, 'a policy needs far fewer levels: check for a missing closing bracket')
     return findings.outcome(() => unreadable(file))
   }
-  const document = parseDocument(text, { schema: 'failsafe', lineCounter: lines, prettyErrors: false, logLevel: 'silent', strict: true, uniqueKeys: true })
+  const document = parseDocument(text, { schema: 'failsafe', prettyErrors: false, logLevel: 'error', strict: true, uniqueKeys: true })
   for (const error of document.errors) {
     const unclosed = error.code === 'BAD_INDENT' && error.message.startsWith('Flow')
     const [message, remedy] = causes[unclosed ? 'MISSING_CHAR' : error.code] ?? [decapitalized(error.message), 'correct the YAML syntax at this place']
@@ -106,6 +102,21 @@ function collected(document: Document.Parsed, file: string, placeOf: (offset: nu
     return values.get('[]') ?? { file, line: 1, column: 1 }
   }
   return findings.outcome(() => ({ file, value, place, keyPlace: (path: Path) => keys.get(JSON.stringify(path)) ?? place(path) }))
+}
+
+/** Turns offsets into places, by halving the list of line starts. */
+function placesIn(text: string, file: string): (offset: number) => Place {
+  const starts = [0]
+  for (let end = text.indexOf('\n'); end !== -1; end = text.indexOf('\n', end + 1)) starts.push(end + 1)
+  return (offset) => {
+    let [low, high] = [0, starts.length]
+    while (high - low > 1) {
+      const middle = (low + high) >> 1
+      if ((starts[middle] ?? 0) <= offset) low = middle
+      else high = middle
+    }
+    return { file, line: low + 1, column: offset - (starts[low] ?? 0) + 1 }
+  }
 }
 
 /** An upper bound on the depth of nesting that needs no recursion: brackets open at once, and distinct indentations open at once. */

@@ -10,7 +10,7 @@ export interface CatalogClient {
 export const oldestServer = 13
 
 /**
- * The shape of the relations in `schemas`, from pg_catalog alone: no row of a table is read. Throws an Error for a server that is too old, and whatever the client
+ * The shape of the relations in `schemas` and in every schema they lead to, from pg_catalog alone: no row of a table is read. Throws an Error for a server that is too old, and whatever the client
  * throws. A `readsFrom` entry that ends in `()` is a function that a view calls; inheritance children and partitions count as read by their parent.
  */
 export async function readCatalog(client: CatalogClient, schemas: readonly string[]): Promise<Catalog> {
@@ -18,6 +18,16 @@ export async function readCatalog(client: CatalogClient, schemas: readonly strin
   const [systemIdentifier, version] = (server.rows[0] ?? []).map(String)
   const serverVersion = Number(version)
   if (systemIdentifier === undefined || !(serverVersion >= oldestServer * 10_000)) throw new Error(`the vault must be PostgreSQL ${oldestServer} or newer`)
-  const relations = await client.query({ text: relationsSql, values: [[...schemas]], rowMode: 'array' })
-  return { systemIdentifier, serverVersion, tables: relations.rows.map((row) => JSON.parse(String(row[0])) as CatalogTable) }
+  for (let wanted: ReadonlySet<string> = new Set(schemas); ; ) {
+    const relations = await client.query({ text: relationsSql, values: [[...wanted]], rowMode: 'array' })
+    const tables = relations.rows.map((row) => JSON.parse(String(row[0])) as CatalogTable)
+    const wider = new Set([...wanted, ...tables.flatMap(schemasReached)])
+    if (wider.size === wanted.size) return { systemIdentifier, serverVersion, tables }
+    wanted = wider
+  }
+}
+
+/** Where a table's foreign keys and a view's sources lie: what they lead to has to be known as well, to tell whether it is about persons. */
+function schemasReached(table: CatalogTable): readonly string[] {
+  return [...table.foreignKeys.map((key) => key.schema), ...table.readsFrom.filter((read) => !read.endsWith('()')).map((read) => read.slice(0, read.indexOf('.')))]
 }

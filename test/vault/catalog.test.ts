@@ -129,6 +129,12 @@ describe('the catalogue reader', () => {
     expect([berths?.primaryKey, berths?.uniqueKeys]).toEqual([null, []])
   })
 
+  test('reads the schemas that foreign keys and views lead to as well', async () => {
+    await client.query('CREATE SCHEMA office; CREATE TABLE office.desks (rider_id integer REFERENCES public.riders); CREATE SCHEMA hall; CREATE VIEW hall.screen AS SELECT 1 AS shown FROM office.desks')
+    const seen = await readCatalog(client, ['hall'])
+    expect(seen.tables.map((each) => `${each.schema}.${each.name}`)).toEqual(['hall.screen', 'office.desks', 'public.complaints', 'public.piers', 'public.riders', 'public.trips'])
+  })
+
   test('needs no more than the right to connect', async () => {
     const role = server.uniqueName('reader')
     await client.query(`CREATE ROLE ${role}`)
