@@ -90,7 +90,7 @@ function linesOf(each: Explained, i: number, count: number, settings: SessionSet
     ]
   })
   const why = `  Noise law: ${price.kind}, ${price.reason}${price.runnerUp === null ? '' : `; ${price.runnerUp.kind} would have ${ratio(price)} times its relative variance`}`
-  const left = balance === undefined ? [] : [`  Left before it: ${leftText(balance)}`, `  Like it, in all: ${timesLeft(balance.cap, { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }, price.charge).toString()}`]
+  const left = balance === undefined ? [] : [`  Left before it: ${leftText(balance)}`, `  Like it, in all: ${!price.charge.rho.isPositive() ? 'without end' : timesLeft(balance.cap, { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }, price.charge).toString()}`]
   const charged = price.mechanisms.length === 0 ? ['  Charge: none'] : [why, `  Charge: ${chargeText(price.charge)}`, ...left]
   return [head, `  Groups: ${groupsText(each)}`, ...capsText(each), ...outputs, ...charged, ...(verbose ? [`  Vault: ${each.sql}`] : [])]
 }

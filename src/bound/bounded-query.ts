@@ -27,6 +27,10 @@ export class BoundedQuery {
   get text(): string {
     return this.#text
   }
+  /** Nothing is bound: every constant stands in the text, quoted by our own printer. */
+  get values(): readonly string[] {
+    return []
+  }
   get tree(): Query {
     return this.#tree
   }

@@ -9,7 +9,9 @@ export function summary(policies: Policies): readonly string[] {
 
 function dataSetLines(policies: Policies, dataSet: DataSet): readonly string[] {
   const width = Math.max(...[...dataSet.tables.keys()].map((key) => key.length))
-  const tables = [...dataSet.tables].map(([key, table]) => `  ${key.padEnd(width)}  ${table.kind === 'published' ? `published, ${count(table.columns.size, 'column')}` : privateLine(table)}`)
+  const tables = [...dataSet.tables].map(
+    ([key, table]) => `  ${key.padEnd(width)}  ${table.kind === 'published' ? `published, ${count(table.columns.size, 'column')}` : privateLine(table)}`,
+  )
   const holders = [...policies.analysts.values()].flatMap((analyst) => {
     const cap = analyst.data.get(dataSet.name)
     return cap === undefined ? [] : [[analyst.name, cap] as const]
@@ -30,7 +32,9 @@ function privateLine(table: PrivateTable): string {
 }
 
 function ownerText(owner: Owner): string {
-  return owner.kind === 'column' ? `owned by ${owner.column}` : `owned through ${owner.steps.map((step) => `${step.column} → ${step.table}.${step.referenced}`).join(', ')} → ${owner.person}`
+  return owner.kind === 'column'
+    ? `owned by ${owner.column}`
+    : `owned through ${owner.steps.map((step) => `${step.column} → ${step.table}.${step.referenced}`).join(', ')} → ${owner.person}`
 }
 
 function capLine(cap: Cap, dataSet: DataSet): string {

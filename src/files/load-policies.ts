@@ -30,9 +30,11 @@ export async function loadPolicies(directory: string, catalogOf: CatalogOf): Pro
   }
   const whole = { file: directory, line: 1, column: 1 }
   const readable = findings.clean
-  if (readable && dataSets.length === 0) findings.complain(whole, 'there is no data set here', 'write a policy such as ferries.yaml, with dataset, person and tables')
+  if (readable && dataSets.length === 0)
+    findings.complain(whole, 'there is no data set here', 'write a policy such as ferries.yaml, with dataset, person and tables')
   if (readable && analysts.length === 0) findings.complain(whole, 'there is no file of analysts here', 'write analysts.yaml, with analysts and everyone')
-  for (const extra of analysts.slice(1)) findings.complain(extra.keyPlace(['analysts']), `analysts are listed in ${analysts[0]?.file ?? ''} as well`, 'keep all analysts in one file')
+  for (const extra of analysts.slice(1))
+    findings.complain(extra.keyPlace(['analysts']), `analysts are listed in ${analysts[0]?.file ?? ''} as well`, 'keep all analysts in one file')
   complainOfTwins(dataSets, findings)
   if (!findings.clean) return findings.outcome(nothing)
   const catalog = await catalogOf([...new Set(dataSets.flatMap(schemasOf))].toSorted())
@@ -45,7 +47,11 @@ export async function loadPolicies(directory: string, catalogOf: CatalogOf): Pro
   const [draftAnalysts] = analysts
   if (draftAnalysts === undefined) return findings.outcome(nothing)
   if (fitted.length < dataSets.length) {
-    complainOfCaps(draftAnalysts, dataSets.map((draft) => draft.content.dataset), findings)
+    complainOfCaps(
+      draftAnalysts,
+      dataSets.map((draft) => draft.content.dataset),
+      findings,
+    )
     return findings.outcome(nothing)
   }
   const policies = assemble(fitted, draftAnalysts)

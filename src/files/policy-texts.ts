@@ -10,7 +10,11 @@ export async function policyTexts(directory: string, findings: Findings): Promis
   try {
     names = (await readdir(directory)).filter((name) => /\.ya?ml$/.test(name) && !name.startsWith('.')).toSorted()
   } catch (error) {
-    findings.complain({ file: directory, line: 1, column: 1 }, `the directory cannot be read (${errorCode(error)})`, 'set HEDGEROW_POLICIES to the directory of the policies')
+    findings.complain(
+      { file: directory, line: 1, column: 1 },
+      `the directory cannot be read (${errorCode(error)})`,
+      'set HEDGEROW_POLICIES to the directory of the policies',
+    )
     return []
   }
   for (const name of names) {

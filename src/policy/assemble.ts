@@ -14,7 +14,12 @@ export function assemble(fitted: readonly { readonly draft: DraftDataSet; readon
   for (const { draft, dataSet } of fitted) warnOfDefaults(draft, dataSet, analysts, findings)
   return findings.outcome(() => ({
     dataSets,
-    analysts: new Map(Object.entries(analysts.content.analysts).map(([name, analyst]) => [name, { name, login: analyst.login ?? null, data: caps(analyst.data ?? {}) } satisfies Analyst])),
+    analysts: new Map(
+      Object.entries(analysts.content.analysts).map(([name, analyst]) => [
+        name,
+        { name, login: analyst.login ?? null, data: caps(analyst.data ?? {}) } satisfies Analyst,
+      ]),
+    ),
     everyone: caps(analysts.content.everyone),
   }))
 }
@@ -25,7 +30,8 @@ export function complainOfTwins(drafts: readonly DraftDataSet[], findings: Findi
   for (const draft of drafts) {
     const name = draft.content.dataset
     const other = files.get(name)
-    if (other !== undefined) findings.complain(draft.place(['dataset']), `dataset: ${name} is declared in ${other} as well`, 'rename one of the two, or remove the file')
+    if (other !== undefined)
+      findings.complain(draft.place(['dataset']), `dataset: ${name} is declared in ${other} as well`, 'rename one of the two, or remove the file')
     else files.set(name, draft.file)
   }
 }
@@ -34,17 +40,37 @@ export function complainOfTwins(drafts: readonly DraftDataSet[], findings: Findi
 export function complainOfCaps(analysts: DraftAnalysts, dataSets: readonly string[], findings: Findings): void {
   const { content } = analysts
   for (const name of Object.keys(content.everyone)) {
-    if (!dataSets.includes(name)) findings.complain(analysts.keyPlace(['everyone', name]), `everyone: there is no data set ${name}`, didYouMean(name, dataSets, 'remove the cap, or write the data set'))
+    if (!dataSets.includes(name))
+      findings.complain(
+        analysts.keyPlace(['everyone', name]),
+        `everyone: there is no data set ${name}`,
+        didYouMean(name, dataSets, 'remove the cap, or write the data set'),
+      )
   }
   for (const [name, analyst] of Object.entries(content.analysts)) {
     for (const [dataSet, cap] of Object.entries(analyst.data ?? {})) {
       const path = ['analysts', name, 'data', dataSet]
       const everyone = content.everyone[dataSet]
-      if (!dataSets.includes(dataSet)) findings.complain(analysts.keyPlace(path), `${path.join('.')}: there is no data set ${dataSet}`, didYouMean(dataSet, dataSets, 'remove it, or write the data set'))
-      else if (everyone === undefined) findings.complain(analysts.keyPlace(path), `${path.join('.')}: everyone has no cap for ${dataSet}`, `write everyone: { ${dataSet}: { epsilon: 12, delta: 1e-5 } }`)
+      if (!dataSets.includes(dataSet))
+        findings.complain(
+          analysts.keyPlace(path),
+          `${path.join('.')}: there is no data set ${dataSet}`,
+          didYouMean(dataSet, dataSets, 'remove it, or write the data set'),
+        )
+      else if (everyone === undefined)
+        findings.complain(
+          analysts.keyPlace(path),
+          `${path.join('.')}: everyone has no cap for ${dataSet}`,
+          `write everyone: { ${dataSet}: { epsilon: 12, delta: 1e-5 } }`,
+        )
       else {
         for (const amount of ['epsilon', 'delta'] as const) {
-          if (exceeds(cap[amount], everyone[amount])) findings.warn(analysts.place([...path, amount]), `${[...path, amount].join('.')}: ${cap[amount]} is above the ${everyone[amount]} of everyone, which ends first`, 'lower it, or raise the cap of everyone')
+          if (exceeds(cap[amount], everyone[amount]))
+            findings.warn(
+              analysts.place([...path, amount]),
+              `${[...path, amount].join('.')}: ${cap[amount]} is above the ${everyone[amount]} of everyone, which ends first`,
+              'lower it, or raise the cap of everyone',
+            )
         }
       }
     }
@@ -55,7 +81,11 @@ function warnOfDefaults(draft: DraftDataSet, dataSet: DataSet, analysts: DraftAn
   for (const [name, analyst] of Object.entries(analysts.content.analysts)) {
     const cap = analyst.data?.[dataSet.name]
     if (cap !== undefined && exceeds(dataSet.defaults.epsilon, cap.epsilon))
-      findings.warn(draft.place(['defaults', 'epsilon']), `defaults.epsilon: ${dataSet.defaults.epsilon} is more than ${name} has in all (${cap.epsilon})`, 'choose a default that leaves room for many statements')
+      findings.warn(
+        draft.place(['defaults', 'epsilon']),
+        `defaults.epsilon: ${dataSet.defaults.epsilon} is more than ${name} has in all (${cap.epsilon})`,
+        'choose a default that leaves room for many statements',
+      )
   }
 }
 

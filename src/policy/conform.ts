@@ -36,7 +36,8 @@ function complain(findings: Findings, yaml: YamlText, schema: z.ZodType, issue: 
     }
     case 'invalid_key': {
       const key = path.at(-1) ?? ''
-      for (const inner of issue.issues) findings.complain(yaml.keyPlace(path), `${path.slice(0, -1).join('.')}: ${key} ${inner.message}`, keyRemedy(schema, yaml.value, path) ?? remedy)
+      for (const inner of issue.issues)
+        findings.complain(yaml.keyPlace(path), `${path.slice(0, -1).join('.')}: ${key} ${inner.message}`, keyRemedy(schema, yaml.value, path) ?? remedy)
       return
     }
     case 'invalid_type': {
@@ -84,7 +85,6 @@ function bare(field: z.ZodType): z.ZodType {
   }
   return inner
 }
-
 
 function remedyOf(field: z.ZodType): string {
   return field.meta()?.remedy ?? 'see the example policy'

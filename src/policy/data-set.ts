@@ -39,7 +39,11 @@ export interface PublishedTable {
 export type Owner =
   | { readonly kind: 'column'; readonly column: string }
   /** from.[column] = table.[referenced], which is proved unique there; the last step's table has `person`. */
-  | { readonly kind: 'through'; readonly steps: readonly { readonly column: string; readonly table: string; readonly referenced: string }[]; readonly person: string }
+  | {
+      readonly kind: 'through'
+      readonly steps: readonly { readonly column: string; readonly table: string; readonly referenced: string }[]
+      readonly person: string
+    }
 
 export interface PrivateTable {
   readonly kind: 'private'

@@ -17,27 +17,40 @@ declare module 'zod' {
 }
 
 /** A number of any size, kept as it was written. */
-export const amount = z
-  .string()
-  .refine((text) => readDecimal(text) !== null, 'is not a plain decimal number')
+export const amount = z.string().refine((text) => readDecimal(text) !== null, 'is not a plain decimal number')
 
 export const epsilon = amount
   .refine((text) => (readDecimal(text)?.units ?? 1n) > 0n, 'must be greater than 0')
-  .meta({ description: 'Privacy loss: any number above 0; small is strict.', remedy: 'write a number above 0, such as 0.1', json: { type: 'number', exclusiveMinimum: 0 } })
+  .meta({
+    description: 'Privacy loss: any number above 0; small is strict.',
+    remedy: 'write a number above 0, such as 0.1',
+    json: { type: 'number', exclusiveMinimum: 0 },
+  })
 
 export const delta = amount
   .refine((text) => {
     const value = readDecimal(text)
     return value === null || (value.units >= 0n && 2n * value.units < 10n ** BigInt(value.scale))
   }, 'must be 0 or more and less than 0.5')
-  .meta({ description: 'The probability with which the bound may fail: 0 or more, far less than 0.5.', remedy: 'write a number such as 1e-8, or 0', json: { type: 'number', minimum: 0, exclusiveMaximum: 0.5 } })
+  .meta({
+    description: 'The probability with which the bound may fail: 0 or more, far less than 0.5.',
+    remedy: 'write a number such as 1e-8, or 0',
+    json: { type: 'number', minimum: 0, exclusiveMaximum: 0.5 },
+  })
 
 /** A literal of a column's type: checked against the column by the fit. */
-export const literal = z.string().max(4096, 'is longer than 4096 characters').meta({ remedy: 'write one plain value', json: { type: ['string', 'number', 'boolean'] } })
+export const literal = z
+  .string()
+  .max(4096, 'is longer than 4096 characters')
+  .meta({ remedy: 'write one plain value', json: { type: ['string', 'number', 'boolean'] } })
 
 export const step = amount
   .refine((text) => (readDecimal(text)?.units ?? 1n) > 0n, 'must be greater than 0')
-  .meta({ description: 'The grid that values are put on.', remedy: 'write a number above 0, such as step: 1 or step: 0.5', json: { type: 'number', exclusiveMinimum: 0 } })
+  .meta({
+    description: 'The grid that values are put on.',
+    remedy: 'write a number above 0, such as step: 1 or step: 0.5',
+    json: { type: 'number', exclusiveMinimum: 0 },
+  })
 
 export const boundCeiling = 1_000_000
 
@@ -45,7 +58,10 @@ export const bound = z
   .string()
   .regex(/^[1-9]\d{0,6}$/, `is not a whole number from 1 to ${boundCeiling}`)
   .refine((text) => !/^\d{1,7}$/.test(text) || Number(text) <= boundCeiling, `is not a whole number from 1 to ${boundCeiling}`)
-  .meta({ remedy: 'write bounds: { groups: 12, rows: 20 } with numbers that most persons stay below', json: { type: 'integer', minimum: 1, maximum: boundCeiling } })
+  .meta({
+    remedy: 'write bounds: { groups: 12, rows: 20 } with numbers that most persons stay below',
+    json: { type: 'integer', minimum: 1, maximum: boundCeiling },
+  })
 
 export const word = z
   .string()
@@ -98,6 +114,11 @@ export const verifier = z
   .string()
   .refine(isVerifier, 'is not a SCRAM-SHA-256 verifier')
   .nullable()
-  .meta({ description: 'A PostgreSQL SCRAM-SHA-256 verifier; `hedgerow password NAME` writes it.', secret: true, remedy: 'remove it and run: hedgerow password NAME', json: { type: ['string', 'null'], pattern: '^SCRAM-SHA-256\\$' } })
+  .meta({
+    description: 'A PostgreSQL SCRAM-SHA-256 verifier; `hedgerow password NAME` writes it.',
+    secret: true,
+    remedy: 'remove it and run: hedgerow password NAME',
+    json: { type: ['string', 'null'], pattern: '^SCRAM-SHA-256\\$' },
+  })
 
 export const renews = z.enum(['never', 'month', 'quarter', 'year'], 'is not a renewal period').meta({ remedy: 'write one of never, month, quarter, year' })

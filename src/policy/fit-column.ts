@@ -24,7 +24,17 @@ export interface ColumnContext {
 
 /** A column without declarations: published, linking, or listed bare. */
 export function plainColumn(column: CatalogColumn, role: DataColumn['role']): DataColumn {
-  return { name: column.name, type: column.type, notNull: column.notNull, deterministic: column.deterministic, role, clamp: null, step: null, values: null, valuesFrom: null }
+  return {
+    name: column.name,
+    type: column.type,
+    notNull: column.notNull,
+    deterministic: column.deterministic,
+    role,
+    clamp: null,
+    step: null,
+    values: null,
+    valuesFrom: null,
+  }
 }
 
 /** A listed column of a private table with its declarations, as far as they are valid. */
@@ -35,7 +45,11 @@ export function fitColumn(context: ColumnContext, column: CatalogColumn, declare
   const first = written[0]
   if (first === undefined) return { ...bare, step: ownStep(column.type) }
   if (!isUsable(column.type)) {
-    findings.complain(place([...path, first]), `${label} has type ${column.type.printed}, for which nothing can be declared`, 'list it as {} (its rows can then be counted), or offer a view that casts it to a plain type')
+    findings.complain(
+      place([...path, first]),
+      `${label} has type ${column.type.printed}, for which nothing can be declared`,
+      'list it as {} (its rows can then be counted), or offer a view that casts it to a plain type',
+    )
     return bare
   }
   if (declared.values !== undefined && declared.values_from !== undefined)
@@ -85,7 +99,11 @@ function fitClamp(context: ColumnContext, type: CatalogType, written: readonly s
   const { findings, label } = context
   const path = [...context.path, 'clamp']
   if (!isOrdered(type)) {
-    findings.complain(context.place(path), `${label} has type ${type.printed}, which cannot be clamped`, 'declare values: […] instead, or {} for a column without declarations')
+    findings.complain(
+      context.place(path),
+      `${label} has type ${type.printed}, which cannot be clamped`,
+      'declare values: […] instead, or {} for a column without declarations',
+    )
     return null
   }
   const ends = written.map((text, index) => fitLiteral(context, type, [...path, index], 'clamp', text))
@@ -100,12 +118,21 @@ function fitClamp(context: ColumnContext, type: CatalogType, written: readonly s
     if (step === null || !isNumber(type) || isMultiple(end, step)) continue
     const [below, above] = multiplesAround(end, step)
     onGrid = false
-    findings.complain(context.place([...path, index]), `${label}: clamp ${printDecimal(end)} is no multiple of the step ${printDecimal(step)}`, `write ${printDecimal(below)} or ${printDecimal(above)}, or another step`)
+    findings.complain(
+      context.place([...path, index]),
+      `${label}: clamp ${printDecimal(end)} is no multiple of the step ${printDecimal(step)}`,
+      `write ${printDecimal(below)} or ${printDecimal(above)}, or another step`,
+    )
   }
   return onGrid ? [low, high] : null
 }
 
-function fitValues(context: ColumnContext, column: CatalogColumn, written: readonly string[] | undefined, clamp: readonly [Literal, Literal] | null): readonly string[] | null {
+function fitValues(
+  context: ColumnContext,
+  column: CatalogColumn,
+  written: readonly string[] | undefined,
+  clamp: readonly [Literal, Literal] | null,
+): readonly string[] | null {
   if (written === undefined) return null
   const { findings, label } = context
   const path = [...context.path, 'values']
@@ -114,10 +141,16 @@ function fitValues(context: ColumnContext, column: CatalogColumn, written: reado
     const literal = fitLiteral(context, column.type, [...path, index], 'values', text)
     if (literal === null) continue
     const twin = seen.get(literal.text)
-    if (twin !== undefined) findings.complain(context.place([...path, index]), `${label}: values lists ${text} twice${twin === text ? '' : ` (as ${twin})`}`, 'keep one of the two')
+    if (twin !== undefined)
+      findings.complain(context.place([...path, index]), `${label}: values lists ${text} twice${twin === text ? '' : ` (as ${twin})`}`, 'keep one of the two')
     seen.set(literal.text, text)
-    const outside = literal.order !== null && clamp?.[0].order && clamp[1].order && (compareDecimals(literal.order, clamp[0].order) < 0n || compareDecimals(literal.order, clamp[1].order) > 0n)
-    if (outside) findings.complain(context.place([...path, index]), `${label}: the value ${text} lies outside the clamp`, 'widen the clamp, or remove the value')
+    const outside =
+      literal.order !== null &&
+      clamp?.[0].order &&
+      clamp[1].order &&
+      (compareDecimals(literal.order, clamp[0].order) < 0n || compareDecimals(literal.order, clamp[1].order) > 0n)
+    if (outside)
+      findings.complain(context.place([...path, index]), `${label}: the value ${text} lies outside the clamp`, 'widen the clamp, or remove the value')
   }
   return [...seen.keys()]
 }
@@ -125,7 +158,11 @@ function fitValues(context: ColumnContext, column: CatalogColumn, written: reado
 function fitLiteral(context: ColumnContext, type: CatalogType, path: Path, key: string, text: string): Literal | null {
   const reading = readLiteral(type, text)
   if (reading.kind === 'literal') return reading.literal
-  context.findings.complain(context.place(path), `${context.label} has type ${type.printed}: ${key} ${text.slice(0, 80)} is not ${reading.expected}`, `write a literal of type ${type.printed}`)
+  context.findings.complain(
+    context.place(path),
+    `${context.label} has type ${type.printed}: ${key} ${text.slice(0, 80)} is not ${reading.expected}`,
+    `write a literal of type ${type.printed}`,
+  )
   return null
 }
 
@@ -136,12 +173,24 @@ function fitValuesFrom(context: ColumnContext, type: CatalogType, reference: str
   const source = columnReference(reference, tables.schema)
   const table = tables.catalog.get(source.table)
   if (!tables.published.has(source.table) || table === undefined) {
-    findings.complain(place, `${label}: values_from ${reference} does not name a published table of this policy`, didYouMean(source.table, [...tables.published], 'list the table with { published: true }'))
+    findings.complain(
+      place,
+      `${label}: values_from ${reference} does not name a published table of this policy`,
+      didYouMean(source.table, [...tables.published], 'list the table with { published: true }'),
+    )
     return null
   }
   const column = table.columns.find((each) => each.name === source.column)
   if (column === undefined) {
-    findings.complain(place, `${label}: values_from ${reference}: the table has no column ${source.column}`, didYouMean(source.column, table.columns.map((each) => each.name), 'name a column of it'))
+    findings.complain(
+      place,
+      `${label}: values_from ${reference}: the table has no column ${source.column}`,
+      didYouMean(
+        source.column,
+        table.columns.map((each) => each.name),
+        'name a column of it',
+      ),
+    )
     return null
   }
   if (column.type.schema !== type.schema || column.type.name !== type.name) {
@@ -149,6 +198,10 @@ function fitValuesFrom(context: ColumnContext, type: CatalogType, reference: str
     return null
   }
   if (!table.uniqueKeys.some((key) => key.length === 1 && key[0] === source.column))
-    findings.warn(place, `${label}: ${reference} is not proved unique and free of NULL`, 'its distinct values are the list, without NULL; give it a unique index and NOT NULL to be sure of one row each')
+    findings.warn(
+      place,
+      `${label}: ${reference} is not proved unique and free of NULL`,
+      'its distinct values are the list, without NULL; give it a unique index and NOT NULL to be sure of one row each',
+    )
   return source
 }

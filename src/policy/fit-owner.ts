@@ -21,7 +21,11 @@ export function fitPersonKey(draft: DraftDataSet, tables: Schemed, findings: Fin
   const reference = columnReference(written, tables.schema)
   const table = tables.catalog.get(reference.table)
   if (table === undefined) {
-    findings.complain(place, `person.key: the vault has no table ${reference.table}`, didYouMean(reference.table, [...tables.catalog.keys()], 'name the table with one row for each person'))
+    findings.complain(
+      place,
+      `person.key: the vault has no table ${reference.table}`,
+      didYouMean(reference.table, [...tables.catalog.keys()], 'name the table with one row for each person'),
+    )
     return null
   }
   const column = columnOf(table, reference.column)
@@ -37,11 +41,24 @@ export function fitPersonKey(draft: DraftDataSet, tables: Schemed, findings: Fin
       'it needs a primary key, or a unique index that is valid, not partial, not deferrable and on this column alone, on an ordinary or partitioned table without inheritance children',
     )
   if (!canIdentify(column.type) || !column.deterministic)
-    findings.complain(place, `person.key: ${written} has type ${column.type.printed}, in which equal values may print apart`, 'use an integer, uuid, text or varchar column with a deterministic collation, or numeric with a scale')
-  if (tables.published.has(reference.table)) findings.complain(draft.keyPlace(['tables', listedName(draft, tables, reference.table)]), `${reference.table} holds the person key and cannot be published`, `write person: ${reference.column} with bounds and columns`)
+    findings.complain(
+      place,
+      `person.key: ${written} has type ${column.type.printed}, in which equal values may print apart`,
+      'use an integer, uuid, text or varchar column with a deterministic collation, or numeric with a scale',
+    )
+  if (tables.published.has(reference.table))
+    findings.complain(
+      draft.keyPlace(['tables', listedName(draft, tables, reference.table)]),
+      `${reference.table} holds the person key and cannot be published`,
+      `write person: ${reference.column} with bounds and columns`,
+    )
   const listed = tables.owned.get(reference.table)
   if (listed !== undefined && listed.declared.person !== reference.column)
-    findings.complain(draft.place(['tables', listed.listedAs, 'person']), `${reference.table} holds the person key: its rows belong to ${reference.column}`, `write person: ${reference.column}`)
+    findings.complain(
+      draft.place(['tables', listed.listedAs, 'person']),
+      `${reference.table} holds the person key: its rows belong to ${reference.column}`,
+      `write person: ${reference.column}`,
+    )
   return { table: reference.table, column }
 }
 
@@ -77,13 +94,23 @@ export function fitOwners(draft: DraftDataSet, tables: Schemed, person: CatalogT
       return null
     }
     if (person !== null && !sameKeyType(column.type, person)) {
-      findings.complain(place, `${key}.${name} has type ${column.type.printed}, but the person key has type ${person.printed}`, 'name the column that holds the person key, or give both the same type')
+      findings.complain(
+        place,
+        `${key}.${name} has type ${column.type.printed}, but the person key has type ${person.printed}`,
+        'name the column that holds the person key, or give both the same type',
+      )
       return null
     }
     return { kind: 'column', column: name }
   }
 
-  const through = (way: { readonly through: string; readonly by: string }, table: CatalogTable, key: string, path: readonly string[], underway: readonly string[]): Owner | null => {
+  const through = (
+    way: { readonly through: string; readonly by: string },
+    table: CatalogTable,
+    key: string,
+    path: readonly string[],
+    underway: readonly string[],
+  ): Owner | null => {
     const reference = columnReference(way.through, tables.schema)
     const throughPlace = draft.place([...path, 'through'])
     const by = columnOf(table, way.by)
@@ -94,7 +121,11 @@ export function fitOwners(draft: DraftDataSet, tables: Schemed, person: CatalogT
     }
     const next = tables.owned.get(reference.table)
     if (next === undefined) {
-      findings.complain(throughPlace, `${reference.table} is no private table of this policy`, didYouMean(reference.table, [...tables.owned.keys()], 'list it with its person'))
+      findings.complain(
+        throughPlace,
+        `${reference.table} is no private table of this policy`,
+        didYouMean(reference.table, [...tables.owned.keys()], 'list it with its person'),
+      )
       return null
     }
     const target = columnOf(next.table, reference.column)
@@ -103,13 +134,23 @@ export function fitOwners(draft: DraftDataSet, tables: Schemed, person: CatalogT
       return null
     }
     if (!isProvedUnique(next.table, reference.column))
-      findings.complain(throughPlace, `${way.through} is not proved unique, so a row of ${key} could belong to several persons`, 'it needs NOT NULL and a unique index that is valid, not partial, not deferrable and on this column alone, on an ordinary or partitioned table')
+      findings.complain(
+        throughPlace,
+        `${way.through} is not proved unique, so a row of ${key} could belong to several persons`,
+        'it needs NOT NULL and a unique index that is valid, not partial, not deferrable and on this column alone, on an ordinary or partitioned table',
+      )
     if (by !== undefined && !sameKeyType(by.type, target.type))
-      findings.complain(draft.place([...path, 'by']), `${key}.${way.by} has type ${by.type.printed}, but ${way.through} has type ${target.type.printed}`, 'name two columns of the same type')
+      findings.complain(
+        draft.place([...path, 'by']),
+        `${key}.${way.by} has type ${by.type.printed}, but ${way.through} has type ${target.type.printed}`,
+        'name two columns of the same type',
+      )
     const onward = visit(reference.table, [...underway, key])
     if (onward === null || by === undefined) return null
     const step = { column: way.by, table: reference.table, referenced: reference.column }
-    return onward.kind === 'column' ? { kind: 'through', steps: [step], person: onward.column } : { kind: 'through', steps: [step, ...onward.steps], person: onward.person }
+    return onward.kind === 'column'
+      ? { kind: 'through', steps: [step], person: onward.column }
+      : { kind: 'through', steps: [step, ...onward.steps], person: onward.person }
   }
 
   for (const key of tables.owned.keys()) visit(key, [])
@@ -140,7 +181,11 @@ export function columnOf(table: CatalogTable, name: string): CatalogColumn | und
 }
 
 export function nearColumn(table: CatalogTable, name: string): string {
-  return didYouMean(name, table.columns.map((column) => column.name), 'name a column of it')
+  return didYouMean(
+    name,
+    table.columns.map((column) => column.name),
+    'name a column of it',
+  )
 }
 
 function listedName(draft: DraftDataSet, tables: Schemed, key: string): string {

@@ -44,7 +44,7 @@ export function personalTables(draft: DraftDataSet, catalog: Catalog, tables: Sc
   const personTable = columnReference(draft.content.person.key, tables.schema).table
   const reasons = new Map<string, string>([[personTable, 'it holds the person key']])
   for (const key of tables.owned.keys()) if (!reasons.has(key)) reasons.set(key, 'it is private')
-  for (let before = -1; before !== reasons.size; ) {
+  for (let before = -1; before !== reasons.size;) {
     before = reasons.size
     for (const table of catalog.tables) {
       const key = `${table.schema}.${table.name}`

@@ -55,7 +55,9 @@ export function fit(draft: DraftDataSet, catalog: Catalog): Outcome<DataSet> {
 
 /** Whether grouping by the column as it stands would need its keys selected at the price of some delta. */
 function isUndeclaredKey(column: DataColumn): boolean {
-  return column.role === 'listed' && column.values === null && column.valuesFrom === null && !(column.type.schema === 'pg_catalog' && column.type.name === 'bool')
+  return (
+    column.role === 'listed' && column.values === null && column.valuesFrom === null && !(column.type.schema === 'pg_catalog' && column.type.name === 'bool')
+  )
 }
 
 function complainOfPublished(draft: DraftDataSet, catalog: Catalog, tables: Schemed, findings: Findings): void {
@@ -64,7 +66,11 @@ function complainOfPublished(draft: DraftDataSet, catalog: Catalog, tables: Sche
     const key = listedAs.includes('.') ? listedAs : `${tables.schema}.${listedAs}`
     const reason = tables.published.has(key) ? personal.get(key) : undefined
     if (reason === undefined || reason === 'it holds the person key') continue
-    findings.complain(draft.keyPlace(['tables', listedAs]), `${key} cannot be published: ${reason}`, 'list it as private with its person, or copy what may be public into a table of its own')
+    findings.complain(
+      draft.keyPlace(['tables', listedAs]),
+      `${key} cannot be published: ${reason}`,
+      'list it as private with its person, or copy what may be public into a table of its own',
+    )
   }
 }
 
@@ -103,7 +109,12 @@ function privateTable(
       findings.complain(draft.keyPlace(path), `${key} has no column ${name}`, nearColumn(table, name))
     } else if (links.has(name)) {
       const first = Object.keys(declarations).find((each) => each !== 'also_identifies')
-      if (first !== undefined) findings.complain(draft.keyPlace([...path, first]), `${key}.${name} links rows to persons and can carry no declarations`, 'leave the column out: it can be joined on, and is never shown')
+      if (first !== undefined)
+        findings.complain(
+          draft.keyPlace([...path, first]),
+          `${key}.${name} links rows to persons and can carry no declarations`,
+          'leave the column out: it can be joined on, and is never shown',
+        )
     } else {
       if (declarations.also_identifies === undefined) complainOfSecondPerson(draft, table, owner, person, listedAs, name, findings)
       columns.set(name, fitColumn({ findings, place: draft.place, keyPlace: draft.keyPlace, path, label: `${key}.${name}`, tables }, column, declarations))
@@ -112,13 +123,32 @@ function privateTable(
   const onePerPerson = owner?.kind === 'column' && isProvedUnique(table, owner.column)
   const bounds = fitBounds(draft, tables, owners, key, onePerPerson, findings)
   if (owner === undefined) return null
-  return { kind: 'private', schema: table.schema, name: table.name, owner, bounds, onePerPerson, columns, uniqueKeys: provedKeys(table), primaryKey: table.primaryKey }
+  return {
+    kind: 'private',
+    schema: table.schema,
+    name: table.name,
+    owner,
+    bounds,
+    onePerPerson,
+    columns,
+    uniqueKeys: provedKeys(table),
+    primaryKey: table.primaryKey,
+  }
 }
 
 /** A row about two persons protects only the one it belongs to: that has to be said. */
-function complainOfSecondPerson(draft: DraftDataSet, table: CatalogTable, owner: Owner | undefined, person: PersonKey, listedAs: string, column: string, findings: Findings): void {
+function complainOfSecondPerson(
+  draft: DraftDataSet,
+  table: CatalogTable,
+  owner: Owner | undefined,
+  person: PersonKey,
+  listedAs: string,
+  column: string,
+  findings: Findings,
+): void {
   const key = table.foreignKeys.find(
-    (each) => each.columns.includes(column) && `${each.schema}.${each.table}` === person.table && !(owner?.kind === 'column' && each.columns.includes(owner.column)),
+    (each) =>
+      each.columns.includes(column) && `${each.schema}.${each.table}` === person.table && !(owner?.kind === 'column' && each.columns.includes(owner.column)),
   )
   if (key === undefined) return
   findings.complain(

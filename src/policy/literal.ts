@@ -16,7 +16,10 @@ export type LiteralReading = { readonly kind: 'literal'; readonly literal: Liter
 
 /** Reads a literal strictly; `expected` of a wrong one completes "is not …". */
 export function readLiteral(type: CatalogType, written: string): LiteralReading {
-  if (type.kind === 'enum') return type.labels.includes(written) ? read(written) : wrong(`one of the labels ${type.labels.slice(0, 12).join(', ')}${type.labels.length > 12 ? ', …' : ''}`)
+  if (type.kind === 'enum')
+    return type.labels.includes(written)
+      ? read(written)
+      : wrong(`one of the labels ${type.labels.slice(0, 12).join(', ')}${type.labels.length > 12 ? ', …' : ''}`)
   if (isNumber(type)) return readNumber(type, written)
   switch (plainType(type)) {
     case 'bool':
@@ -24,9 +27,17 @@ export function readLiteral(type: CatalogType, written: string): LiteralReading 
     case 'date':
       return counted(readDate(written), printDate, 'a date such as 2025-01-31')
     case 'timestamp':
-      return counted(readMoment(written, false), (moment) => printMoment(moment, false), 'a date or a time of a day without zone, such as 2025-01-31 or 2025-01-31 08:30')
+      return counted(
+        readMoment(written, false),
+        (moment) => printMoment(moment, false),
+        'a date or a time of a day without zone, such as 2025-01-31 or 2025-01-31 08:30',
+      )
     case 'timestamptz':
-      return counted(readMoment(written, true), (moment) => printMoment(moment, true), 'a date or a time of a day, in UTC or with an offset, such as 2025-01-31 08:30+01:00')
+      return counted(
+        readMoment(written, true),
+        (moment) => printMoment(moment, true),
+        'a date or a time of a day, in UTC or with an offset, such as 2025-01-31 08:30+01:00',
+      )
     case 'time':
       return counted(readTime(written), printTime, 'a time such as 08:30')
     case 'interval':

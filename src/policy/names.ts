@@ -1,5 +1,20 @@
 const wordForm = /^[a-z][a-z0-9_]{0,62}$/
-const reservedWords = new Set(['postgres', 'hedgerow', 'replication', 'all', 'sameuser', 'samerole', 'template0', 'template1', 'public', 'none', 'current_user', 'current_role', 'session_user', 'user'])
+const reservedWords = new Set([
+  'postgres',
+  'hedgerow',
+  'replication',
+  'all',
+  'sameuser',
+  'samerole',
+  'template0',
+  'template1',
+  'public',
+  'none',
+  'current_user',
+  'current_role',
+  'session_user',
+  'user',
+])
 
 /** Why a text cannot name a database or a role of the lobby; null where it can. */
 export function wordComplaint(word: string): string | null {

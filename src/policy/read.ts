@@ -48,7 +48,8 @@ export function readAnalystsFile(text: string, file: string): Outcome<DraftAnaly
   return readDraft(text, file, analystsFile, (draft, findings) => {
     for (const [name, analyst] of Object.entries(draft.content.analysts)) {
       const place = draft.keyPlace(['analysts', name])
-      if (analyst.login === undefined || analyst.login === null) findings.warn(place, `${name} has no login and cannot connect`, `run: hedgerow password ${name}`)
+      if (analyst.login === undefined || analyst.login === null)
+        findings.warn(place, `${name} has no login and cannot connect`, `run: hedgerow password ${name}`)
       const caps = Object.entries(analyst.data ?? {})
       if (caps.length === 0) findings.warn(place, `${name} may use no data set`, `write data: { <dataset>: { epsilon: 4, delta: 1e-6 } } under ${name}`)
       for (const [dataSet, cap] of caps) warnOfAmounts(findings, draft, ['analysts', name, 'data', dataSet], cap)
@@ -69,7 +70,12 @@ export function schemasOf(draft: DraftDataSet): readonly string[] {
   return [...new Set([schema, ...keys.map((key) => key.slice(0, key.indexOf('.')))])]
 }
 
-function readDraft<T>(text: string, file: string, schema: Parameters<typeof conform>[1], inspect: (draft: Draft<T>, findings: Findings) => void): Outcome<Draft<T>> {
+function readDraft<T>(
+  text: string,
+  file: string,
+  schema: Parameters<typeof conform>[1],
+  inspect: (draft: Draft<T>, findings: Findings) => void,
+): Outcome<Draft<T>> {
   const yaml = readYaml(text, file)
   if (yaml.kind === 'complaints') return yaml
   const content = conform(yaml.value, schema)
@@ -80,16 +86,28 @@ function readDraft<T>(text: string, file: string, schema: Parameters<typeof conf
   return findings.outcome(() => draft)
 }
 
-function warnOfAmounts(findings: Findings, draft: Draft<unknown>, path: Path, amounts: { readonly epsilon?: string | undefined; readonly delta?: string | undefined }): void {
+function warnOfAmounts(
+  findings: Findings,
+  draft: Draft<unknown>,
+  path: Path,
+  amounts: { readonly epsilon?: string | undefined; readonly delta?: string | undefined },
+): void {
   const { epsilon, delta } = amounts
   if (epsilon !== undefined && exceeds(epsilon, epsilonWorthAWarning))
-    findings.warn(draft.place([...path, 'epsilon']), `${path.join('.')}.epsilon: ${epsilon} bounds very little: odds about a person may change by a factor of e^${epsilon}`, 'choose 10 or less where people must be protected')
+    findings.warn(
+      draft.place([...path, 'epsilon']),
+      `${path.join('.')}.epsilon: ${epsilon} bounds very little: odds about a person may change by a factor of e^${epsilon}`,
+      'choose 10 or less where people must be protected',
+    )
   if (delta !== undefined && exceeds(delta, deltaWorthAWarning))
-    findings.warn(draft.place([...path, 'delta']), `${path.join('.')}.delta: ${delta} is large: by common practice delta stays well below one in the number of persons`, 'choose 1e-6 or less')
+    findings.warn(
+      draft.place([...path, 'delta']),
+      `${path.join('.')}.delta: ${delta} is large: by common practice delta stays well below one in the number of persons`,
+      'choose 1e-6 or less',
+    )
 }
 
 function exceeds(text: string, ceiling: Decimal): boolean {
   const value = readDecimal(text)
   return value !== null && compareDecimals(value, ceiling) > 0n
 }
-

@@ -38,7 +38,11 @@ export function readYaml(text: string, file: string): Outcome<YamlText> {
   const findings = new Findings()
   const start: Place = { file, line: 1, column: 1 }
   if (Buffer.byteLength(text) > fileCeiling) {
-    findings.complain(start, `the file is longer than ${fileCeiling} bytes`, 'divide it into several data sets, or move long value lists into a published table and use values_from')
+    findings.complain(
+      start,
+      `the file is longer than ${fileCeiling} bytes`,
+      'divide it into several data sets, or move long value lists into a published table and use values_from',
+    )
     return findings.outcome(() => unreadable(file))
   }
   const placeOf = placesIn(text, file)
@@ -69,7 +73,8 @@ function collected(document: Document.Parsed, file: string, placeOf: (offset: nu
       findings.complain(place, 'anchors and aliases are not used in policies', 'write the value out')
       return null
     }
-    if (node.tag !== undefined && !/^tag:yaml\.org,2002:(map|seq|str)$/.test(node.tag)) findings.complain(place, 'tags and directives are not used in policies', 'remove it')
+    if (node.tag !== undefined && !/^tag:yaml\.org,2002:(map|seq|str)$/.test(node.tag))
+      findings.complain(place, 'tags and directives are not used in policies', 'remove it')
     if (isMap(node)) {
       const mapping: Record<string, unknown> = {}
       for (const pair of node.items) {
@@ -86,7 +91,7 @@ function collected(document: Document.Parsed, file: string, placeOf: (offset: nu
     }
     if (isSeq(node)) return node.items.map((item, index) => walk(item as ParsedNode, [...path, index], place))
     if (isScalar(node)) {
-      const written = String(node.value ?? '')
+      const written = typeof node.value === 'string' ? node.value : ''
       if (written.includes('\0')) findings.complain(place, 'a text holds a NUL character', 'PostgreSQL has none in its texts: remove it')
       return node.type === 'PLAIN' && /^(~|null|Null|NULL|)$/.test(written) ? null : written
     }
@@ -130,7 +135,11 @@ function deepestNesting(text: string): number {
     const indent = line.length - body.length
     while (indents.length > 0 && (indents.at(-1) ?? 0) >= indent) indents.pop()
     indents.push(indent)
-    const dashes = /^(- +|-$|\? +)*/.exec(body)?.[0].split(' ').filter((word) => word !== '').length ?? 0
+    const dashes =
+      /^(- +|-$|\? +)*/
+        .exec(body)?.[0]
+        .split(' ')
+        .filter((word) => word !== '').length ?? 0
     for (const character of body) {
       if (character === '[' || character === '{') brackets++
       else if ((character === ']' || character === '}') && brackets > 0) brackets--

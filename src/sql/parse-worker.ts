@@ -59,7 +59,8 @@ const program = `
   }
 `
 
-const path = createRequire(import.meta.url).resolve('libpg-query')
+const require = createRequire(import.meta.url)
+const path = require.resolve('libpg-query')
 
 /** Starts a parser thread. It says 'ready' once, then answers each text with one Verdict, in order. `levels` is the deepest tree it hands out. */
 export function startWorker(stackSizeMb: number, levels: number): Worker {

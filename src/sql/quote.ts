@@ -3,7 +3,22 @@ import { keywords } from './keywords.ts'
 
 /** Keywords that are so common as names, and so harmless in every place a name is printed, that quotes would only disturb. */
 const plainKeywords: ReadonlySet<string> = new Set([
-  'data', 'day', 'hour', 'key', 'label', 'level', 'location', 'minute', 'month', 'name', 'second', 'text', 'type', 'value', 'version', 'year',
+  'data',
+  'day',
+  'hour',
+  'key',
+  'label',
+  'level',
+  'location',
+  'minute',
+  'month',
+  'name',
+  'second',
+  'text',
+  'type',
+  'value',
+  'version',
+  'year',
 ])
 
 /** An identifier as SQL text, in quotes unless it is a plain lower-case word and no keyword. */

@@ -139,8 +139,7 @@ const readers: Readonly<Record<string, Read>> = {
     node.only('argnumber', -1)
     return read(node, { kind: 'named-argument', name: node.text('name'), value: reader.expr(node.need('arg')), at: node.at })
   },
-  NullTest: (node, reader) =>
-    read(node, { kind: 'is-null', arg: reader.expr(node.need('arg')), negated: node.choice('nulltesttype', nullTests), at: node.at }),
+  NullTest: (node, reader) => read(node, { kind: 'is-null', arg: reader.expr(node.need('arg')), negated: node.choice('nulltesttype', nullTests), at: node.at }),
   BooleanTest: (node, reader) =>
     read(node, { kind: 'is-boolean', arg: reader.expr(node.need('arg')), ...node.choice('booltesttype', booleanTests), at: node.at }),
   TypeCast: (node, reader) => {
@@ -155,13 +154,10 @@ const readers: Readonly<Record<string, Read>> = {
       args: each(node, 'args', reader),
       at: node.at,
     }),
-  SQLValueFunction: (node) =>
-    read(node, { kind: 'value-function', word: node.choice('op', valueFunctions), precision: node.number('typmod'), at: node.at }),
-  RowExpr: (node, reader) =>
-    read(node, { kind: 'row', args: each(node, 'args', reader), explicit: node.choice('row_format', rowFormats), at: node.at }),
+  SQLValueFunction: (node) => read(node, { kind: 'value-function', word: node.choice('op', valueFunctions), precision: node.number('typmod'), at: node.at }),
+  RowExpr: (node, reader) => read(node, { kind: 'row', args: each(node, 'args', reader), explicit: node.choice('row_format', rowFormats), at: node.at }),
   A_ArrayExpr: (node, reader) => read(node, { kind: 'array', items: each(node, 'elements', reader), at: node.at }),
-  CollateClause: (node, reader) =>
-    read(node, { kind: 'collate', arg: reader.expr(node.need('arg')), collation: readName(node, 'collname'), at: node.at }),
+  CollateClause: (node, reader) => read(node, { kind: 'collate', arg: reader.expr(node.need('arg')), collation: readName(node, 'collname'), at: node.at }),
   GroupingFunc: (node, reader) => read(node, { kind: 'grouping', args: each(node, 'args', reader), at: node.at }),
   SetToDefault: (node) => read(node, { kind: 'default', at: node.at }),
 }

@@ -82,12 +82,34 @@ export type Expr =
   /** a IS [NOT] DISTINCT FROM b; `name` is the operator it stands on, ['=']. */
   | { readonly kind: 'distinct'; readonly name: Name; readonly left: Expr; readonly right: Expr; readonly negated: boolean; readonly at: number } // negated: IS NOT DISTINCT FROM
   | { readonly kind: 'in-list'; readonly arg: Expr; readonly list: readonly Expr[]; readonly negated: boolean; readonly at: number }
-  | { readonly kind: 'between'; readonly arg: Expr; readonly low: Expr; readonly high: Expr; readonly negated: boolean; readonly symmetric: boolean; readonly at: number }
-  | { readonly kind: 'like'; readonly arg: Expr; readonly pattern: Expr; readonly word: 'like' | 'ilike' | 'similar'; readonly operator: Name; readonly negated: boolean; readonly at: number }
+  | {
+      readonly kind: 'between'
+      readonly arg: Expr
+      readonly low: Expr
+      readonly high: Expr
+      readonly negated: boolean
+      readonly symmetric: boolean
+      readonly at: number
+    }
+  | {
+      readonly kind: 'like'
+      readonly arg: Expr
+      readonly pattern: Expr
+      readonly word: 'like' | 'ilike' | 'similar'
+      readonly operator: Name
+      readonly negated: boolean
+      readonly at: number
+    }
   | { readonly kind: 'quantified'; readonly left: Expr; readonly name: Name; readonly all: boolean; readonly right: Expr; readonly at: number } // a = ANY (array)
   | { readonly kind: 'nullif'; readonly name: Name; readonly left: Expr; readonly right: Expr; readonly at: number }
   | { readonly kind: 'cast'; readonly arg: Expr; readonly type: TypeRef; readonly at: number }
-  | { readonly kind: 'case'; readonly arg: Expr | null; readonly whens: readonly { readonly when: Expr; readonly then: Expr }[]; readonly otherwise: Expr | null; readonly at: number }
+  | {
+      readonly kind: 'case'
+      readonly arg: Expr | null
+      readonly whens: readonly { readonly when: Expr; readonly then: Expr }[]
+      readonly otherwise: Expr | null
+      readonly at: number
+    }
   | { readonly kind: 'coalesce'; readonly args: readonly Expr[]; readonly at: number }
   | { readonly kind: 'extreme'; readonly word: 'greatest' | 'least'; readonly args: readonly Expr[]; readonly at: number }
   /** current_date and its kin; `precision` -1 where none was written. */
@@ -222,7 +244,15 @@ export type Statement =
   /** SELECT … INTO [TEMP] t. */
   | { readonly kind: 'select-into'; readonly into: IntoTable; readonly query: Query }
   | { readonly kind: 'create-table-as'; readonly into: IntoTable; readonly statement: Statement; readonly ifNotExists: boolean; readonly withData: boolean }
-  | { readonly kind: 'create-view'; readonly name: Name; readonly columns: readonly string[]; readonly replace: boolean; readonly temporary: boolean; readonly options: readonly Option[]; readonly query: Query }
+  | {
+      readonly kind: 'create-view'
+      readonly name: Name
+      readonly columns: readonly string[]
+      readonly replace: boolean
+      readonly temporary: boolean
+      readonly options: readonly Option[]
+      readonly query: Query
+    }
   | { readonly kind: 'insert'; readonly table: Name; readonly alias: string; readonly columns: readonly string[]; readonly query: Query }
   | { readonly kind: 'declare-cursor'; readonly name: string; readonly options: number; readonly query: Query }
   | { readonly kind: 'copy-to-stdout'; readonly query: Query; readonly options: readonly Option[] }

@@ -18,7 +18,7 @@ export async function readCatalog(client: CatalogClient, schemas: readonly strin
   const [systemIdentifier, version] = (server.rows[0] ?? []).map(String)
   const serverVersion = Number(version)
   if (systemIdentifier === undefined || !(serverVersion >= oldestServer * 10_000)) throw new Error(`the vault must be PostgreSQL ${oldestServer} or newer`)
-  for (let wanted: ReadonlySet<string> = new Set(schemas); ; ) {
+  for (let wanted: ReadonlySet<string> = new Set(schemas); ;) {
     const relations = await client.query({ text: relationsSql, values: [[...wanted]], rowMode: 'array' })
     const tables = relations.rows.map((row) => JSON.parse(String(row[0])) as CatalogTable)
     const wider = new Set([...wanted, ...tables.flatMap(schemasReached)])
@@ -29,5 +29,8 @@ export async function readCatalog(client: CatalogClient, schemas: readonly strin
 
 /** Where a table's foreign keys and a view's sources lie: what they lead to has to be known as well, to tell whether it is about persons. */
 function schemasReached(table: CatalogTable): readonly string[] {
-  return [...table.foreignKeys.map((key) => key.schema), ...table.readsFrom.filter((read) => !read.endsWith('()')).map((read) => read.slice(0, read.indexOf('.')))]
+  return [
+    ...table.foreignKeys.map((key) => key.schema),
+    ...table.readsFrom.filter((read) => !read.endsWith('()')).map((read) => read.slice(0, read.indexOf('.'))),
+  ]
 }

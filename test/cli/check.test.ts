@@ -31,7 +31,10 @@ afterEach(async () => {
   await rm(directory, { recursive: true, force: true })
 })
 
-async function hedgerow(args: readonly string[], settings: { readonly policies: string; readonly vaultUrl: string | null }): Promise<{ readonly code: number; readonly lines: readonly string[] }> {
+async function hedgerow(
+  args: readonly string[],
+  settings: { readonly policies: string; readonly vaultUrl: string | null },
+): Promise<{ readonly code: number; readonly lines: readonly string[] }> {
   const lines: string[] = []
   const code = await runCommand(policyCommands, args, settings, { input: new PassThrough(), output: new PassThrough() }, (line) => lines.push(line))
   return { code, lines }
@@ -56,10 +59,13 @@ describe('hedgerow check', () => {
   })
 
   test('prints every complaint with file, line and column, and fails', async () => {
-    for (const name of ['ferries.yaml', 'analysts.yaml']) await writeFile(join(directory, name), (await readFile(join(shipped, name), 'utf8')).replace('clamp: [1920, 2020]', 'clamp: [2020, 1920]'))
+    for (const name of ['ferries.yaml', 'analysts.yaml'])
+      await writeFile(join(directory, name), (await readFile(join(shipped, name), 'utf8')).replace('clamp: [1920, 2020]', 'clamp: [2020, 1920]'))
     const { code, lines } = await hedgerow(['check'], { policies: directory, vaultUrl })
     expect([code, lines.at(-1)]).toEqual([1, '1 complaint: these policies will not be loaded'])
-    expect(lines.at(-2)).toBe(`${directory}/ferries.yaml:25:28: public.riders.birth_year: clamp 2020 is not below 1920\n    write the least value first, then a greater one`)
+    expect(lines.at(-2)).toBe(
+      `${directory}/ferries.yaml:25:28: public.riders.birth_year: clamp 2020 is not below 1920\n    write the least value first, then a greater one`,
+    )
   })
 
   test.each([

@@ -60,27 +60,30 @@ describe('hedgerow password', () => {
   })
   afterAll(() => server.stop())
 
-  test.each(['harbour lights', "quote'\"\\$ back", 'pier\u00a0ſeven ⅷ', 'Überfähre'])('PostgreSQL takes the verifier, and lets its password in: %s', async (typed) => {
-    const { code } = await saying((say) => password(directory, 'ana', piped(`${typed}\r\n`), say))
-    expect(code).toBe(0)
-    const verifier = (await loginOf('ana')) ?? ''
-    const role = server.uniqueName('ana')
-    const admin = new pg.Client({ connectionString: server.url() })
-    await admin.connect()
-    try {
-      await admin.query(`CREATE ROLE ${role} LOGIN PASSWORD ${pg.escapeLiteral(verifier)}`)
-      const kept = await admin.query<{ rolpassword: string }>('SELECT rolpassword FROM pg_authid WHERE rolname = $1', [role])
-      expect(kept.rows).toEqual([{ rolpassword: verifier }])
-      const as = (given: string) => new pg.Client({ host: server.host, port: server.port, user: role, password: given, database: 'postgres' })
-      const client = as(typed.normalize('NFKC'))
-      await client.connect()
-      await client.end()
-      await expect(as(`${typed}x`).connect()).rejects.toMatchObject({ code: '28P01' })
-    } finally {
-      await admin.query(`DROP ROLE IF EXISTS ${role}`)
-      await admin.end()
-    }
-  })
+  test.each(['harbour lights', 'quote\'"\\$ back', 'pier\u00a0ſeven ⅷ', 'Überfähre'])(
+    'PostgreSQL takes the verifier, and lets its password in: %s',
+    async (typed) => {
+      const { code } = await saying((say) => password(directory, 'ana', piped(`${typed}\r\n`), say))
+      expect(code).toBe(0)
+      const verifier = (await loginOf('ana')) ?? ''
+      const role = server.uniqueName('ana')
+      const admin = new pg.Client({ connectionString: server.url() })
+      await admin.connect()
+      try {
+        await admin.query(`CREATE ROLE ${role} LOGIN PASSWORD ${pg.escapeLiteral(verifier)}`)
+        const kept = await admin.query<{ rolpassword: string }>('SELECT rolpassword FROM pg_authid WHERE rolname = $1', [role])
+        expect(kept.rows).toEqual([{ rolpassword: verifier }])
+        const as = (given: string) => new pg.Client({ host: server.host, port: server.port, user: role, password: given, database: 'postgres' })
+        const client = as(typed.normalize('NFKC'))
+        await client.connect()
+        await client.end()
+        await expect(as(`${typed}x`).connect()).rejects.toMatchObject({ code: '28P01' })
+      } finally {
+        await admin.query(`DROP ROLE IF EXISTS ${role}`)
+        await admin.end()
+      }
+    },
+  )
 
   test('changes the login alone: comments, layout, mode and links stay', async () => {
     await chmod(join(directory, 'analysts.yaml'), 0o640)
@@ -159,9 +162,12 @@ describe('setting a login in the text', () => {
     expect(setLogin(text, 'analysts.yaml', 'ana', v)).toEqual({ kind: 'edited', text: expected })
   })
 
-  test.each(['analysts:\n  ana: &a {}\n', 'analysts:\n  ana: [x]\n', 'analysts:\n  ana:\n    login: [x]\n', 'analysts: [ana]\n'])('is refused rather than guessed at: %j', (text) => {
-    expect(setLogin(text, 'analysts.yaml', 'ana', v).kind).toBe('refused')
-  })
+  test.each(['analysts:\n  ana: &a {}\n', 'analysts:\n  ana: [x]\n', 'analysts:\n  ana:\n    login: [x]\n', 'analysts: [ana]\n'])(
+    'is refused rather than guessed at: %j',
+    (text) => {
+      expect(setLogin(text, 'analysts.yaml', 'ana', v).kind).toBe('refused')
+    },
+  )
 })
 
 describe('preparing a password', () => {

@@ -55,7 +55,14 @@ describe('loading policies', () => {
     ])
     if (outcome.kind !== 'fits') return
     const ferries = outcome.value.dataSets.get('ferries')
-    expect(ferries).toMatchObject({ personCalled: 'rider', personTable: 'public.riders', personColumn: 'rider_id', replyAfterMs: 300, defaults: { epsilon: '0.1', delta: '1e-8' }, hasUndeclaredKeys: true })
+    expect(ferries).toMatchObject({
+      personCalled: 'rider',
+      personTable: 'public.riders',
+      personColumn: 'rider_id',
+      replyAfterMs: 300,
+      defaults: { epsilon: '0.1', delta: '1e-8' },
+      hasUndeclaredKeys: true,
+    })
     expect(ferries?.personKey).toMatch(/^\d+\/public\.riders\.rider_id$/)
     expect(ferries?.policyHash).toMatch(/^[0-9a-f]{64}$/)
     expect([...(ferries?.tables.keys() ?? [])]).toEqual(['public.riders', 'public.trips', 'public.complaints', 'public.piers'])
@@ -116,6 +123,9 @@ describe('loading policies', () => {
     expect(complaintsOf(await loadPolicies(directory, catalogOf))).toEqual([':1:1 there is no data set here', ':1:1 there is no file of analysts here'])
     expect(complaintsOf(await loadPolicies(join(directory, 'none'), catalogOf))).toEqual(['none:1:1 the directory cannot be read (ENOENT)'])
     await write({ 'long.yaml': `dataset: ${'a'.repeat(300_000)}`, 'odd.yaml': new Uint8Array([0x64, 0xff, 0xfe]) })
-    expect(complaintsOf(await loadPolicies(directory, catalogOf))).toEqual(['long.yaml:1:1 the file is longer than 262144 bytes', 'odd.yaml:1:1 the file is not UTF-8'])
+    expect(complaintsOf(await loadPolicies(directory, catalogOf))).toEqual([
+      'long.yaml:1:1 the file is longer than 262144 bytes',
+      'odd.yaml:1:1 the file is not UTF-8',
+    ])
   })
 })

@@ -8,7 +8,11 @@ import { watchPolicies } from '../../src/files/watch-policies.ts'
 test('tells of changes to policy files once each, however many steps they take, and of nothing else', async () => {
   const directory = await mkdtemp(join(tmpdir(), 'watch-'))
   let changes = 0
-  const watch = watchPolicies(directory, () => changes++, () => undefined)
+  const watch = watchPolicies(
+    directory,
+    () => changes++,
+    () => undefined,
+  )
   try {
     await writeFile(join(directory, 'notes.txt'), 'a')
     await wait(400)

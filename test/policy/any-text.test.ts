@@ -4,7 +4,40 @@ import { expect, test } from 'vitest'
 import { readAnalystsFile, readDataSetFile } from '../../src/policy/read.ts'
 
 const shipped = ['ferries.yaml', 'analysts.yaml'].map((name) => readFileSync(new URL(`../../policies/${name}`, import.meta.url), 'utf8'))
-const scrap = fc.constantFrom('', ' ', '\n', '\t', ':', '- ', '{', '}', '[', ']', '"', "'", '&a', '*a', '!!int ', '#', '|', '>', '? ', ', ', '0', '-1', '1e9', '~', 'true', 'x:', '\n  y: z\n', '<<: ', '%', '\u0000', '\ud800', '\u2028')
+const scrap = fc.constantFrom(
+  '',
+  ' ',
+  '\n',
+  '\t',
+  ':',
+  '- ',
+  '{',
+  '}',
+  '[',
+  ']',
+  '"',
+  "'",
+  '&a',
+  '*a',
+  '!!int ',
+  '#',
+  '|',
+  '>',
+  '? ',
+  ', ',
+  '0',
+  '-1',
+  '1e9',
+  '~',
+  'true',
+  'x:',
+  '\n  y: z\n',
+  '<<: ',
+  '%',
+  '\u0000',
+  '\ud800',
+  '\u2028',
+)
 
 test('no text makes the reader throw, and every complaint has a place in it, a message and a remedy', () => {
   fc.assert(

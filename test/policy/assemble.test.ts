@@ -4,7 +4,8 @@ import type { DataSet } from '../../src/policy/data-set.ts'
 import { fit } from '../../src/policy/fit.ts'
 import { readAnalystsFile, readDataSetFile } from '../../src/policy/read.ts'
 
-const dataSetText = 'dataset: ferries\nperson: { called: rider, key: riders.rider_id }\ndefaults: { epsilon: 0.5 }\ntables:\n  riders: { person: rider_id, columns: {} }\n'
+const dataSetText =
+  'dataset: ferries\nperson: { called: rider, key: riders.rider_id }\ndefaults: { epsilon: 0.5 }\ntables:\n  riders: { person: rider_id, columns: {} }\n'
 const integer = { schema: 'pg_catalog', name: 'int4', printed: 'integer', modifier: -1, kind: 'base', labels: [] } as const
 const catalog = {
   systemIdentifier: '7',
@@ -38,7 +39,9 @@ const said = (each: { readonly file: string; readonly line: number; readonly col
 
 describe('data sets and caps together', () => {
   test('a data set that does not exist, and a cap that is missing for everyone, are refused', () => {
-    const outcome = assembled('analysts:\n  ana:\n    data:\n      feries: { epsilon: 1, delta: 0 }\n      ferries: { epsilon: 1, delta: 0 }\neveryone: { piers: { epsilon: 1, delta: 0 } }\n')
+    const outcome = assembled(
+      'analysts:\n  ana:\n    data:\n      feries: { epsilon: 1, delta: 0 }\n      ferries: { epsilon: 1, delta: 0 }\neveryone: { piers: { epsilon: 1, delta: 0 } }\n',
+    )
     expect(outcome.kind === 'complaints' && outcome.complaints.map(said)).toEqual([
       'analysts.yaml:4:7 analysts.ana.data.feries: there is no data set feries (did you mean ferries?)',
       'analysts.yaml:5:7 analysts.ana.data.ferries: everyone has no cap for ferries (write everyone: { ferries: { epsilon: 12, delta: 1e-5 } })',
@@ -47,7 +50,9 @@ describe('data sets and caps together', () => {
   })
 
   test("a cap above everyone's, and a default above a cap, are warned of", () => {
-    const outcome = assembled('analysts:\n  ana: { login: null, data: { ferries: { epsilon: 0.4, delta: 1.1e-5 } } }\neveryone: { ferries: { epsilon: 0.3999, delta: 1e-5, renews: year } }\n')
+    const outcome = assembled(
+      'analysts:\n  ana: { login: null, data: { ferries: { epsilon: 0.4, delta: 1.1e-5 } } }\neveryone: { ferries: { epsilon: 0.3999, delta: 1e-5, renews: year } }\n',
+    )
     expect([outcome.kind, outcome.warnings.map(said)]).toEqual([
       'fits',
       [
@@ -60,6 +65,10 @@ describe('data sets and caps together', () => {
 
   test('an analyst without login is kept, so that the log-in can be set later', () => {
     const outcome = assembled('analysts: { ana: { data: { ferries: { epsilon: 1, delta: 1e-9 } } } }\neveryone: { ferries: { epsilon: 2, delta: 1e-8 } }\n')
-    expect(outcome.kind === 'fits' && outcome.value.analysts.get('ana')).toEqual({ name: 'ana', login: null, data: new Map([['ferries', { epsilon: '1', delta: '1e-9', renews: 'never' }]]) })
+    expect(outcome.kind === 'fits' && outcome.value.analysts.get('ana')).toEqual({
+      name: 'ana',
+      login: null,
+      data: new Map([['ferries', { epsilon: '1', delta: '1e-9', renews: 'never' }]]),
+    })
   })
 })

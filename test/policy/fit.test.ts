@@ -77,7 +77,11 @@ function fitted(text: string): { readonly dataSet: DataSet | null; readonly comp
   if (draft.kind === 'complaints') throw new Error(JSON.stringify(draft.complaints))
   const outcome = fit(draft.value, catalog)
   const print = (each: { readonly line: number; readonly column: number; readonly message: string }): string => `${each.line}:${each.column} ${each.message}`
-  return { dataSet: outcome.kind === 'fits' ? outcome.value : null, complaints: outcome.kind === 'fits' ? [] : outcome.complaints.map(print), warnings: outcome.warnings.map(print) }
+  return {
+    dataSet: outcome.kind === 'fits' ? outcome.value : null,
+    complaints: outcome.kind === 'fits' ? [] : outcome.complaints.map(print),
+    warnings: outcome.warnings.map(print),
+  }
 }
 
 function privateTable(dataSet: DataSet | null, key: string): PrivateTable {
@@ -106,7 +110,11 @@ const cases: readonly (readonly [from: string, to: string, message: string])[] =
   ['by: trip_id', 'by: ▸small', 'public.complaints.small has type integer, but trips.trip_id has type bigint'],
   ['    bounds: { groups: 12, rows: 20 }\n', '', 'tables.trips: bounds is missing'],
   ['{ groups: 12, rows: 20 }', '▸{ groups: 12 }', 'tables.trips.bounds.rows is missing'],
-  ['{ groups: 12, rows: 20 }', '▸{ groups: 1000000, rows: 1001 }', 'tables.trips.bounds: 1000000 groups of 1001 rows are more than 1000000000 rows for one person'],
+  [
+    '{ groups: 12, rows: 20 }',
+    '▸{ groups: 1000000, rows: 1001 }',
+    'tables.trips.bounds: 1000000 groups of 1001 rows are more than 1000000000 rows for one person',
+  ],
   ['topic: {}', '▸topics: {}', 'public.complaints has no column topics'],
   [column, 'fare: { clamp: [0, ▸25.5] }', 'public.trips.fare has type integer: clamp 25.5 is not a whole number from -2147483648 to 2147483647'],
   [column, 'fare: { clamp: [0, ▸3000000000] }', 'public.trips.fare has type integer: clamp 3000000000 is not a whole number from -2147483648 to 2147483647'],
@@ -118,7 +126,11 @@ const cases: readonly (readonly [from: string, to: string, message: string])[] =
   [column, 'delay: { clamp: [▸-0.1, 120], step: 0.5 }', 'public.trips.delay: clamp -0.1 is no multiple of the step 0.5'],
   [column, 'day: { clamp: [2025-01-01, ▸2025-02-30] }', 'public.trips.day has type date: clamp 2025-02-30 is not a date such as 2025-01-31'],
   [column, 'day: { clamp: [2025-01-01, 2025-02-28], step: ▸1 }', 'public.trips.day has type date: only numbers have a step'],
-  [column, 'boarded_at: { clamp: [▸now, 2025-02-28] }', 'public.trips.boarded_at has type timestamp with time zone: clamp now is not a date or a time of a day, in UTC or with an offset, such as 2025-01-31 08:30+01:00'],
+  [
+    column,
+    'boarded_at: { clamp: [▸now, 2025-02-28] }',
+    'public.trips.boarded_at has type timestamp with time zone: clamp now is not a date or a time of a day, in UTC or with an offset, such as 2025-01-31 08:30+01:00',
+  ],
   [column, 'open: { clamp: ▸[false, true] }', 'public.trips.open has type boolean, which cannot be clamped'],
   [column, 'sky: { values: [fog, ▸storm] }', 'public.trips.sky has type weather: values storm is not one of the labels fog, calm, gale'],
   [column, 'price: { clamp: ▸[0, 1] }', 'public.trips.price has type pence, for which nothing can be declared'],
@@ -127,11 +139,19 @@ const cases: readonly (readonly [from: string, to: string, message: string])[] =
   [column, 'fare: { values: [1, ▸1.0] }', 'public.trips.fare: values lists 1.0 twice (as 1)'],
   [column, 'fare: { clamp: [0, 5], values: [1, ▸6] }', 'public.trips.fare: the value 6 lies outside the clamp'],
   [column, 'fare: { values: [1], ▸values_from: piers.zone }', 'public.trips.fare declares both values and values_from|'],
-  ['values_from: piers.pier_id', 'values_from: ▸riders.birth_year', 'public.trips.from_pier: values_from riders.birth_year does not name a published table of this policy'],
+  [
+    'values_from: piers.pier_id',
+    'values_from: ▸riders.birth_year',
+    'public.trips.from_pier: values_from riders.birth_year does not name a published table of this policy',
+  ],
   ['values_from: piers.pier_id', 'values_from: ▸piers.pier', 'public.trips.from_pier: values_from piers.pier: the table has no column pier'],
   ['values_from: piers.pier_id', 'values_from: ▸piers.name', 'public.trips.from_pier has type integer, but piers.name has type text'],
   [column, '▸companion: {}', 'public.trips.companion refers to a second rider by a foreign key to public.riders, whom this row does not protect'],
-  ['birth_year: {}', '▸referred_by: {}', 'public.riders.referred_by refers to a second rider by a foreign key to public.riders, whom this row does not protect'],
+  [
+    'birth_year: {}',
+    '▸referred_by: {}',
+    'public.riders.referred_by refers to a second rider by a foreign key to public.riders, whom this row does not protect',
+  ],
   [column, 'trip_id: { ▸clamp: [0, 1] }', 'public.trips.trip_id links rows to persons and can carry no declarations'],
   [piers, `${piers}\n  ▸passes: { published: true }`, 'public.passes cannot be published: its foreign key (rider_id) refers to public.riders'],
   [piers, `${piers}\n  ▸notes: { published: true }`, 'public.notes cannot be published: its foreign key (trip_id) refers to public.trips'],
@@ -163,7 +183,9 @@ describe('a policy that does not fit the vault', () => {
   })
 
   test.each(['old_riders', 'rider_view'])('inheritance and views prove nothing unique: %s', (name) => {
-    expect(fitted(`dataset: ferries\nperson: { called: rider, key: ${name}.rider_id }\ntables:\n  piers: { published: true }\n`).complaints).toContain(`2:31 person.key: ${name}.rider_id is not proved unique`)
+    expect(fitted(`dataset: ferries\nperson: { called: rider, key: ${name}.rider_id }\ntables:\n  piers: { published: true }\n`).complaints).toContain(
+      `2:31 person.key: ${name}.rider_id is not proved unique`,
+    )
   })
 
   test('the table of persons cannot be published', () => {
@@ -172,14 +194,23 @@ describe('a policy that does not fit the vault', () => {
   })
 
   test('a way in a circle is refused', () => {
-    const text = exchanged(policy, 'person: { through: trips.trip_id, by: trip_id }', 'person: { through: replies.reply_id, by: complaint_id }\n    bounds: { groups: 1, rows: 1 }') + '  replies:\n    person: { through: complaints.complaint_id, by: complaint_id }\n    bounds: { groups: 1, rows: 1 }\n'
+    const text =
+      exchanged(
+        policy,
+        'person: { through: trips.trip_id, by: trip_id }',
+        'person: { through: replies.reply_id, by: complaint_id }\n    bounds: { groups: 1, rows: 1 }',
+      ) + '  replies:\n    person: { through: complaints.complaint_id, by: complaint_id }\n    bounds: { groups: 1, rows: 1 }\n'
     expect(fitted(text).complaints).toEqual(['19:24 the way from public.replies to its person leads back to public.complaints'])
   })
 
   test('all complaints come at once, with the nearest name as remedy', () => {
     const draft = readDataSetFile(policy.replace('topic:', 'topics:').replace('birth_year', 'birthyear').replace('2500', '2500.5'), 'ferries.yaml')
     const outcome = draft.kind === 'fits' ? fit(draft.value, catalog) : draft
-    expect(outcome.kind === 'complaints' && outcome.complaints.map((each) => each.remedy)).toEqual(['did you mean birth_year?', 'write a literal of type integer', 'did you mean topic?'])
+    expect(outcome.kind === 'complaints' && outcome.complaints.map((each) => each.remedy)).toEqual([
+      'did you mean birth_year?',
+      'write a literal of type integer',
+      'did you mean topic?',
+    ])
   })
 })
 
@@ -188,7 +219,10 @@ describe('a policy that fits', () => {
     const { dataSet, complaints } = fitted(policy)
     expect(complaints).toEqual([])
     expect(privateTable(dataSet, 'public.complaints')).toMatchObject({ bounds: { groups: 12, rows: 20 }, onePerPerson: false })
-    expect([...privateTable(dataSet, 'public.complaints').columns.values()].map((each) => [each.name, each.role])).toEqual([['trip_id', 'linking'], ['topic', 'listed']])
+    expect([...privateTable(dataSet, 'public.complaints').columns.values()].map((each) => [each.name, each.role])).toEqual([
+      ['trip_id', 'linking'],
+      ['topic', 'listed'],
+    ])
     expect(privateTable(dataSet, 'public.riders')).toMatchObject({ onePerPerson: true, bounds: { groups: 1, rows: 1 } })
   })
 
@@ -216,7 +250,13 @@ describe('a policy that fits', () => {
   })
 
   test('numeric brings its own step, other numbers none, and literals are canonical', () => {
-    const { dataSet } = fitted(exchanged(policy, column, 'delay: { clamp: [0, 1.2e2] }\n      height: { clamp: [-1e2, 0.50] }\n      wait: { clamp: [0:00, 90 minutes] }\n      day: { clamp: [2025-01-01, 2025-12-31] }'))
+    const { dataSet } = fitted(
+      exchanged(
+        policy,
+        column,
+        'delay: { clamp: [0, 1.2e2] }\n      height: { clamp: [-1e2, 0.50] }\n      wait: { clamp: [0:00, 90 minutes] }\n      day: { clamp: [2025-01-01, 2025-12-31] }',
+      ),
+    )
     const { columns } = privateTable(dataSet, 'public.trips')
     expect(['delay', 'height', 'wait', 'day'].map((name) => [columns.get(name)?.clamp, columns.get(name)?.step])).toEqual([
       [['0', '120'], '0.1'],
@@ -231,17 +271,22 @@ describe('a policy that fits', () => {
   })
 
   test('keys are undeclared as soon as one listed private column has neither values nor two of them', () => {
-    const declared = 'dataset: ferries\nperson: { called: rider, key: riders.rider_id }\ntables:\n  riders: { person: rider_id, columns: { district: { values: [Northbank] } } }\n  trips: { person: rider_id, bounds: { groups: 1, rows: 1 }, columns: { open: {}, rider_id: {} } }\n'
+    const declared =
+      'dataset: ferries\nperson: { called: rider, key: riders.rider_id }\ntables:\n  riders: { person: rider_id, columns: { district: { values: [Northbank] } } }\n  trips: { person: rider_id, bounds: { groups: 1, rows: 1 }, columns: { open: {}, rider_id: {} } }\n'
     expect(fitted(declared).dataSet?.hasUndeclaredKeys).toBe(false)
     expect(fitted(declared.replace('open: {}', 'day: { clamp: [2025-01-01, 2025-12-31] }')).dataSet?.hasUndeclaredKeys).toBe(true)
   })
 
   test('a source of values that is not unique is warned of', () => {
-    expect(fitted(exchanged(policy, 'piers.pier_id', 'piers.zone')).warnings).toEqual(['12:33 public.trips.from_pier: piers.zone is not proved unique and free of NULL'])
+    expect(fitted(exchanged(policy, 'piers.pier_id', 'piers.zone')).warnings).toEqual([
+      '12:33 public.trips.from_pier: piers.zone is not proved unique and free of NULL',
+    ])
   })
 
   test('a table of another schema and a view over published tables can be listed', () => {
-    const { dataSet } = fitted(`${policy}  yard.repairs: { person: rider_id, bounds: { groups: 1, rows: 2 }, columns: { cost: {} } }\n  pier_view: { published: true }\n`)
+    const { dataSet } = fitted(
+      `${policy}  yard.repairs: { person: rider_id, bounds: { groups: 1, rows: 2 }, columns: { cost: {} } }\n  pier_view: { published: true }\n`,
+    )
     expect([...(dataSet?.tables.keys() ?? [])].slice(-2)).toEqual(['yard.repairs', 'public.pier_view'])
     expect(dataSet?.tables.get('public.pier_view')).toMatchObject({ kind: 'published', uniqueKeys: [], primaryKey: null })
   })

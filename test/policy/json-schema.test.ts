@@ -3,12 +3,18 @@ import { describe, expect, test } from 'vitest'
 import { jsonSchemas } from '../../src/policy/json-schema.ts'
 
 describe('the JSON Schemas for editors', () => {
-  test.each(Object.entries(jsonSchemas))('%s is what the reader accepts (after a change: npx vitest run test/policy/json-schema.test.ts -u)', async (name, make) => {
-    await expect(make()).toMatchFileSnapshot(`../../policies/.schema/${name}`)
-  })
+  test.each(Object.entries(jsonSchemas))(
+    '%s is what the reader accepts (after a change: npx vitest run test/policy/json-schema.test.ts -u)',
+    async (name, make) => {
+      await expect(make()).toMatchFileSnapshot(`../../policies/.schema/${name}`)
+    },
+  )
 
   test('amounts are numbers to whoever writes them, and unknown keys are refused', () => {
-    const schema = JSON.parse(jsonSchemas['dataset.json']()) as { additionalProperties: boolean; properties: { defaults: { properties: Record<string, unknown> } } }
+    const schema = JSON.parse(jsonSchemas['dataset.json']()) as {
+      additionalProperties: boolean
+      properties: { defaults: { properties: Record<string, unknown> } }
+    }
     expect(schema.additionalProperties).toBe(false)
     expect(schema.properties.defaults.properties['epsilon']).toMatchObject({ type: 'number', exclusiveMinimum: 0 })
     expect(jsonSchemas['dataset.json']()).not.toContain('"remedy"')

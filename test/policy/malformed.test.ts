@@ -97,7 +97,11 @@ const dataSetCases: readonly (readonly [from: string, to: string, message: strin
   ['values_from: piers.pier_id', 'also_identifies: ▸yes', 'tables.trips.columns.from_pier.also_identifies: yes can only be accepted'],
   ['from_pier: {', '▸from.pier: {', 'tables.trips.columns: from.pier is not the name of a column'],
   ['columns: { district: { values: [Northbank, Eastquay] } }', 'columns: ▸[district]', 'tables.riders.columns is a list, not a mapping'],
-  ['columns: { district: { values: [Northbank, Eastquay] } }', 'columns: { district: ▸all }', 'tables.riders.columns.district is a single value, not a mapping'],
+  [
+    'columns: { district: { values: [Northbank, Eastquay] } }',
+    'columns: { district: ▸all }',
+    'tables.riders.columns.district is a single value, not a mapping',
+  ],
   // the text itself
   ['schema: public', 'schema: public\n▸schema: public', 'this key stands twice in the same mapping'],
   ['schema: public', 'schema: &here ▸public', 'anchors and aliases are not used in policies'],
@@ -116,7 +120,11 @@ const analystCases: readonly (readonly [from: string, to: string, message: strin
   ['  ana:', '  ▸hedgerow_ana:', 'analysts: hedgerow_ana is a name that PostgreSQL or the proxy keeps for itself'],
   ['  ana:', '  ▸pg_ana:', 'analysts: pg_ana is a name that PostgreSQL or the proxy keeps for itself'],
   ['login: null', 'login: ▸harbour', 'analysts.ana.login is not a SCRAM-SHA-256 verifier'],
-  ['login: null', 'login: ▸SCRAM-SHA-256$1024:ZmVycnkgY29tcGFueSBhbg==$SPJ7Nc9QdOpAAL4zCNiNf6JQ88EmRwoWyYo2kjc/aOg=:IOMgCK6HzU0L2reYbjWKLQzEOaaYuIIBbzqGfnq4qWQ=', 'analysts.ana.login is not a SCRAM-SHA-256 verifier'],
+  [
+    'login: null',
+    'login: ▸SCRAM-SHA-256$1024:ZmVycnkgY29tcGFueSBhbg==$SPJ7Nc9QdOpAAL4zCNiNf6JQ88EmRwoWyYo2kjc/aOg=:IOMgCK6HzU0L2reYbjWKLQzEOaaYuIIBbzqGfnq4qWQ=',
+    'analysts.ana.login is not a SCRAM-SHA-256 verifier',
+  ],
   ['login: null', 'login: ▸{ password: harbour }', 'analysts.ana.login is a mapping, not a single value'],
   ['login: null', '▸logn: null', 'analysts.ana: the key logn is not known here'],
   ['ferries: { epsilon: 4, delta: 1e-6, renews: never }', 'ferries: ▸4', 'analysts.ana.data.ferries is a single value, not a mapping'],
@@ -125,7 +133,11 @@ const analystCases: readonly (readonly [from: string, to: string, message: strin
   ['delta: 1e-6', 'delta: ▸1', 'analysts.ana.data.ferries.delta: 1 must be 0 or more and less than 0.5'],
   ['renews: never', 'renews: ▸weekly', 'analysts.ana.data.ferries.renews: weekly is not a renewal period'],
   ['renews: never', '▸renew: never', 'analysts.ana.data.ferries: the key renew is not known here'],
-  ['everyone: { ferries', 'everyone: { ▸Ferries', 'everyone: Ferries is not a lower-case word of letters, digits and _, at most 63 long, that begins with a letter'],
+  [
+    'everyone: { ferries',
+    'everyone: { ▸Ferries',
+    'everyone: Ferries is not a lower-case word of letters, digits and _, at most 63 long, that begins with a letter',
+  ],
   ['everyone: { ferries: { epsilon: 9, delta: 1e-5 } }', '', 'everyone is missing'],
 ]
 

@@ -61,7 +61,12 @@ describe('the parser', () => {
   })
 
   test('refuses one statement without spoiling the others', async () => {
-    expect(await codes(parser, 'SELECT 1; SELECT 1 FROM t FOR UPDATE; SELECT 2; SELECT JSON_ARRAY(1)')).toEqual([null, 'text.unreadable', null, 'text.unreadable'])
+    expect(await codes(parser, 'SELECT 1; SELECT 1 FROM t FOR UPDATE; SELECT 2; SELECT JSON_ARRAY(1)')).toEqual([
+      null,
+      'text.unreadable',
+      null,
+      'text.unreadable',
+    ])
   })
 
   test('refuses what is too long, by bytes', async () => {

@@ -37,7 +37,17 @@ describe('what is printed reads well', () => {
 describe('names and texts', () => {
   test('a name is quoted unless it is a plain lower-case word', () => {
     expect(['a', 'rider_id', '_x1', 'text', 'day'].map(quoteName)).toEqual(['a', 'rider_id', '_x1', 'text', 'day'])
-    expect(['A', 'a b', 'a"b', '1a', 'é', 'a$', 'select', 'user', 'rows'].map(quoteName)).toEqual(['"A"', '"a b"', '"a""b"', '"1a"', '"é"', '"a$"', '"select"', '"user"', '"rows"'])
+    expect(['A', 'a b', 'a"b', '1a', 'é', 'a$', 'select', 'user', 'rows'].map(quoteName)).toEqual([
+      '"A"',
+      '"a b"',
+      '"a""b"',
+      '"1a"',
+      '"é"',
+      '"a$"',
+      '"select"',
+      '"user"',
+      '"rows"',
+    ])
   })
 
   test('a name cannot be empty, and neither it nor a text holds NUL', () => {
@@ -110,7 +120,10 @@ describe('PostgreSQL gives the printed text the answer and the types it gives th
     `SELECT o."select", (o."quo""te").x, ("quo""te")."Y", (o."quo""te").*, o.* FROM "Odd table" AS o ORDER BY a, o."select" NULLS FIRST`,
     `SELECT a, "select", count(*), grouping(a, "select") FROM "Odd table" GROUP BY GROUPING SETS (ROLLUP (a, "select"), ()) ORDER BY 1, 2, 3, 4`,
     `SELECT DISTINCT ON (a) a, "select" FROM "Odd table" ORDER BY a, "select" DESC NULLS LAST`,
-    `SELECT a, sum(a) OVER w, count(*) OVER (w ROWS BETWEEN 1 PRECEDING AND CURRENT ROW EXCLUDE TIES), string_agg("select", ',' ORDER BY "select" DESC) FILTER (WHERE a > 1) OVER () FROM (SELECT a, "select" FROM "Odd table") s GROUP BY a, "select" WINDOW w AS (ORDER BY a)`.replace(`, string_agg("select", ',' ORDER BY "select" DESC) FILTER (WHERE a > 1) OVER ()`, ''),
+    `SELECT a, sum(a) OVER w, count(*) OVER (w ROWS BETWEEN 1 PRECEDING AND CURRENT ROW EXCLUDE TIES), string_agg("select", ',' ORDER BY "select" DESC) FILTER (WHERE a > 1) OVER () FROM (SELECT a, "select" FROM "Odd table") s GROUP BY a, "select" WINDOW w AS (ORDER BY a)`.replace(
+      `, string_agg("select", ',' ORDER BY "select" DESC) FILTER (WHERE a > 1) OVER ()`,
+      '',
+    ),
     `SELECT string_agg(DISTINCT "select", ',' ORDER BY "select" DESC), percentile_cont(ARRAY[0.5, 0.9]) WITHIN GROUP (ORDER BY a DESC), count(*) FILTER (WHERE a = 2), mode() WITHIN GROUP (ORDER BY "select") FROM "Odd table"`,
     `WITH RECURSIVE n (i) AS (SELECT 1 UNION ALL SELECT i + 1 FROM n WHERE i < 5), m AS NOT MATERIALIZED (SELECT 9) SELECT sum(i), (SELECT * FROM m) FROM n`,
     `(SELECT 1 UNION ALL SELECT 1) EXCEPT ALL SELECT 1`,

@@ -68,7 +68,9 @@ function attempt(tree: RawFields): Statement | 'refused' {
 }
 
 describe('every field of every node is read or the statement refused', () => {
-  const texts = Object.values(corpus).flat().filter((_, index) => index % 3 === 0)
+  const texts = Object.values(corpus)
+    .flat()
+    .filter((_, index) => index % 3 === 0)
 
   test.each(texts)('a field nobody knows is refused wherever it stands: %s', async (text) => {
     const tree = await raw(text)
@@ -179,7 +181,11 @@ describe('what the parser leaves out or folds', () => {
   })
 
   test('a negative constant is a sign before a constant', async () => {
-    for (const [text, kind, value] of [['-1', 'integer', '1'], ['- 1.50', 'decimal', '1.50'], ['-2147483648', 'decimal', '2147483648']] as const) {
+    for (const [text, kind, value] of [
+      ['-1', 'integer', '1'],
+      ['- 1.50', 'decimal', '1.50'],
+      ['-2147483648', 'decimal', '2147483648'],
+    ] as const) {
       expect(await expr(text)).toMatchObject({ kind: 'operator', name: ['-'], left: null, right: { kind: 'constant', constant: { kind, value } } })
     }
     expect(await expr('- - 1')).toMatchObject({ kind: 'constant', constant: { kind: 'integer', value: '1' } })

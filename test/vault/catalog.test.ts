@@ -70,7 +70,11 @@ describe('the catalogue reader', () => {
       readsFrom: [],
       foreignKeys: expect.arrayContaining([{ columns: ['rider_id'], schema: 'public', table: 'riders', referenced: ['rider_id'] }]),
     })
-    expect(table('public.trips').columns.map((column) => [column.name, column.type.printed, column.notNull])).toContainEqual(['delay_min', 'numeric(5,1)', false])
+    expect(table('public.trips').columns.map((column) => [column.name, column.type.printed, column.notNull])).toContainEqual([
+      'delay_min',
+      'numeric(5,1)',
+      false,
+    ])
     expect(catalog.systemIdentifier).toMatch(/^\d{15,20}$/)
     expect(catalog.serverVersion).toBeGreaterThanOrEqual(130000)
   })
@@ -117,7 +121,9 @@ describe('the catalogue reader', () => {
 
   test('counts a column with an unvalidated NOT NULL constraint as nullable', async () => {
     if (catalog.serverVersion < 180000) return
-    await client.query('CREATE TABLE deck.hasty (id integer UNIQUE); INSERT INTO deck.hasty VALUES (NULL), (NULL); ALTER TABLE deck.hasty ADD CONSTRAINT later NOT NULL id NOT VALID')
+    await client.query(
+      'CREATE TABLE deck.hasty (id integer UNIQUE); INSERT INTO deck.hasty VALUES (NULL), (NULL); ALTER TABLE deck.hasty ADD CONSTRAINT later NOT NULL id NOT VALID',
+    )
     const [hasty] = (await readCatalog(client, ['deck'])).tables.filter((each) => each.name === 'hasty')
     expect([hasty?.columns[0]?.notNull, hasty?.uniqueKeys]).toEqual([false, []])
   })
@@ -130,9 +136,18 @@ describe('the catalogue reader', () => {
   })
 
   test('reads the schemas that foreign keys and views lead to as well', async () => {
-    await client.query('CREATE SCHEMA office; CREATE TABLE office.desks (rider_id integer REFERENCES public.riders); CREATE SCHEMA hall; CREATE VIEW hall.screen AS SELECT 1 AS shown FROM office.desks')
+    await client.query(
+      'CREATE SCHEMA office; CREATE TABLE office.desks (rider_id integer REFERENCES public.riders); CREATE SCHEMA hall; CREATE VIEW hall.screen AS SELECT 1 AS shown FROM office.desks',
+    )
     const seen = await readCatalog(client, ['hall'])
-    expect(seen.tables.map((each) => `${each.schema}.${each.name}`)).toEqual(['hall.screen', 'office.desks', 'public.complaints', 'public.piers', 'public.riders', 'public.trips'])
+    expect(seen.tables.map((each) => `${each.schema}.${each.name}`)).toEqual([
+      'hall.screen',
+      'office.desks',
+      'public.complaints',
+      'public.piers',
+      'public.riders',
+      'public.trips',
+    ])
   })
 
   test('needs no more than the right to connect', async () => {
