@@ -95,9 +95,6 @@ const endWords: readonly (readonly [bit: number, words: string])[] = [
   [0x4000, 'FOLLOWING'],
 ]
 
-/** frameOptions of a window without a frame: RANGE from the start to the current row's peers. */
-export const defaultFrame = 0x2 | 0x20 | 0x400
-
 function frameText(window: WindowFrame, printer: Printer): string {
   const has = (bit: number): boolean => (window.options & bit) !== 0
   if (!has(frame.written)) return ''

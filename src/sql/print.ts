@@ -6,7 +6,7 @@ import { queryText } from './print-query.ts'
 import { statementText } from './print-statement.ts'
 import type { Expr, Query, Statement, TypeRef } from './tree.ts'
 
-export { quoteName, quotePath, quoteString } from './quote.ts'
+export { quoteName, quoteString } from './quote.ts'
 
 const printer: Printer = {
   expr: (e, level = levels.any) => exprText(e, level, printer),
