@@ -3,7 +3,7 @@ const pure = ['base', 'sql', 'catalog', 'policy', 'plan', 'bound', 'noise', 'bud
 /** The folders that touch sockets, files and databases. They meet in main and in the demo, nowhere else. */
 const edges = ['vault', 'lobby', 'ledger', 'wire', 'admin', 'embedded', 'files']
 /** What joins the edges: nothing imports it. */
-const joints = ['cli', 'demo']
+const joints = ['cli', 'demo', 'serve']
 
 const below = (folders) => `^src/(${folders.join('|')})/`
 const entries = '^src/(main|cli)\\.ts$|^src/demo/main\\.ts$'
@@ -18,7 +18,7 @@ const builtIns = {
   sql: ['worker_threads', 'url', 'module', 'crypto'],
 }
 /** Packages, and the only folders that may use them. */
-const packages = { 'libpg-query': ['sql'], pg: ['vault', 'lobby', 'ledger', 'demo'], yaml: ['policy', 'cli'], zod: ['policy', 'wire'] }
+const packages = { 'libpg-query': ['sql'], pg: ['vault', 'lobby', 'ledger', 'demo', 'serve'], yaml: ['policy', 'cli'], zod: ['policy', 'wire'] }
 
 const order = pure.map((layer, index) => ({
   name: `order-${layer}`,
