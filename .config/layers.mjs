@@ -15,6 +15,7 @@ const builtIns = {
   release: ['crypto'],
   noise: ['crypto'],
   plan: ['crypto'],
+  answer: ['crypto'],
   sql: ['worker_threads', 'url', 'module', 'crypto'],
 }
 /** Packages, and the only folders that may use them. */
