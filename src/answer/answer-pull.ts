@@ -2,27 +2,18 @@ import { unreachable } from '../base/check.ts'
 import { Failure } from '../base/failure.ts'
 import { Refusal } from '../base/refusal.ts'
 import { accountsOf } from './accounts.ts'
-import type { Describer } from './block-types.ts'
 import { explainStatement } from './explain.ts'
-import { give, type GiveParts } from './give.ts'
-import { dataSetFor, type InForce } from './in-force.ts'
-import type { LastAnswers } from './last-answers.ts'
+import { give } from './give.ts'
+import { dataSetFor } from './in-force.ts'
 import { noticeOf, outputsOf } from './notice.ts'
 import { planText } from './plan-text.ts'
-import type { AnswerPull, Lobby, PullReply, PullRequest } from './ports.ts'
+import type { AnswerPull, PullReply, PullRequest } from './ports.ts'
+import type { PullParts } from './pull-parts.ts'
 import { prepare } from './prepare.ts'
 import { priceOf } from './price.ts'
 import { readSessionSettings } from './session-settings.ts'
 import { sharesOf } from './statement-log.ts'
 import { boundsRows, budgetRows, chargesRows, lastAnswerRows } from './views.ts'
-
-export interface PullParts extends GiveParts {
-  readonly lobby: Lobby
-  readonly describer: Describer
-  readonly lastAnswers: LastAnswers
-  /** The policies in force, as of now. */
-  inForce(): InForce
-}
 
 type Rows = Extract<PullReply, { kind: 'rows' }>
 

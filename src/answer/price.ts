@@ -3,13 +3,13 @@ import { Fraction } from '../base/fraction.ts'
 import { refuse } from '../base/refusal.ts'
 import { reachesOf } from '../bound/reach.ts'
 import type { Account, Balance, Charge } from '../budget/ledger.ts'
-import { gaussianCostsStatements } from '../budget/left.ts'
 import { statementBudget } from '../budget/statement-budget.ts'
 import { type Candidate, choose, type NoiseCharge } from '../noise/choose.ts'
 import type { Mechanism } from '../noise/make-mechanism.ts'
 import { keyThreshold } from '../noise/threshold.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import type { SessionSettings } from './session-settings.ts'
+import { defaultStatementsLeft } from './default-statements.ts'
 
 /** What a release costs and which noise it gets, fixed before anything is debited. */
 export interface Price {
@@ -38,8 +38,11 @@ export function priceOf(plan: ReleasePlan, groups: bigint, blocks: number, setti
   if (reaches.length === 0) return { charge: { epsilon: Fraction.zero, rho: Fraction.zero, delta: Fraction.zero }, mechanisms: [], kind: 'laplace', taken: nothingTaken, runnerUp: null, reason: 'every group is declared, so nothing is asked of the vault', threshold: null }
   const open = balance.epsilonSpent !== null
   const choice = choose(reaches, { epsilon: open ? budget.epsilon : null, rho: budget.rho }, settings.noise)
-  if (choice === null) return refuse('setting.bad', { name: 'noise', value: 'gaussian', expected: 'laplace or auto: this account has no delta', sample: 'auto' })
-  const taken = keepsPureTrack(choice, settings, account, balance, delta)
+  if (choice === null) {
+    if (settings.noise === 'gaussian') return refuse('setting.bad', { name: 'noise', value: 'gaussian', expected: 'laplace or auto: this account has no delta', sample: 'auto' })
+    return refuse('budget.spent', { account: 'your', epsilon: settings.epsilon.toDecimal(6, 'up'), left: 'no track of this account can bear it' })
+  }
+  const taken = keepsPureTrack(plan, choice, settings, balance)
   const made = taken.candidate
   const persons = plan.groups.kind === 'selected' ? made.mechanisms[plan.groups.persons] : undefined
   check(!selects || persons !== undefined, 'selected groups have a mechanism for their person count')
@@ -62,14 +65,18 @@ interface Taken {
   readonly reason: string
 }
 
-/** 'auto' never makes an account's first Gaussian release where that lowers the number of such statements left: one Gaussian release closes the pure track. */
-function keepsPureTrack(choice: Candidate & { readonly runnerUp: Candidate | null }, settings: SessionSettings, account: Account, balance: Balance, delta: Fraction): Taken {
+/** 'auto' never makes an account's first Gaussian release where that lowers the number of default statements left: one Gaussian release closes the pure track. */
+function keepsPureTrack(plan: ReleasePlan, choice: Candidate & { readonly runnerUp: Candidate | null }, settings: SessionSettings, balance: Balance): Taken {
   const { runnerUp } = choice
   if (settings.noise !== 'auto') return { candidate: choice, runnerUp, reason: `as set by hedgerow.noise` }
-  if (choice.kind === 'gaussian' && runnerUp !== null) {
-    const spent = { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }
-    const charge = (noise: NoiseCharge): Charge => ({ ...noise, delta })
-    if (gaussianCostsStatements(account.cap, spent, charge(choice.charge), charge(runnerUp.charge))) return { candidate: runnerUp, runnerUp: choice, reason: 'a first Gaussian release would leave fewer such statements' }
+  if (choice.kind === 'gaussian' && runnerUp !== null && balance.epsilonSpent !== null) {
+    const left = (noise: NoiseCharge): bigint => defaultStatementsLeft(after(balance, noise), plan.dataSet)
+    if (left(choice.charge) + 1n < left(runnerUp.charge)) return { candidate: runnerUp, runnerUp: choice, reason: 'a first Gaussian release would leave fewer default statements' }
   }
   return { candidate: choice, runnerUp, reason: runnerUp === null ? 'the only law this account can pay for' : 'the lesser variance at the same charge' }
+}
+
+function after(balance: Balance, noise: NoiseCharge): Balance {
+  const epsilonSpent = balance.epsilonSpent === null || noise.epsilon === null ? null : balance.epsilonSpent.add(noise.epsilon)
+  return { ...balance, epsilonSpent, rhoSpent: balance.rhoSpent.add(noise.rho) }
 }

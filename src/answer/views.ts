@@ -1,10 +1,9 @@
 import { Fraction } from '../base/fraction.ts'
-import { statementBudget } from '../budget/statement-budget.ts'
-import { pureRho } from '../noise/laplace-law.ts'
-import { timesLeft, epsilonSpent } from '../budget/left.ts'
+import { epsilonSpent } from '../budget/left.ts'
 import type { Balance, Ledger } from '../budget/ledger.ts'
 import type { DataSet, Policies, PrivateTable } from '../policy/data-set.ts'
 import { accountsOf } from './accounts.ts'
+import { defaultStatementsLeft } from './default-statements.ts'
 import type { LastOutput } from './last-answers.ts'
 import type { PullRequest } from './ports.ts'
 import { typedName } from '../plan/names.ts'
@@ -44,16 +43,6 @@ function budgetRow(balance: Balance, dataSet: DataSet, name: string): Row {
     amount(balance.rhoEver, 15),
     noteOf(balance, epsilonSpent(cap, spent)),
   ])
-}
-
-/** How many statements at the data set's default epsilon still fit, under whichever law lasts longer. */
-export function defaultStatementsLeft(balance: Balance, dataSet: DataSet): bigint {
-  const spent = { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }
-  const budget = statementBudget(Fraction.parse(dataSet.defaults.epsilon), balance.cap)
-  const pure = { epsilon: budget.epsilon, rho: pureRho(budget.epsilon), delta: Fraction.zero }
-  const onPure = balance.epsilonSpent === null ? 0n : timesLeft(balance.cap, spent, pure)
-  const onRho = budget.rho.isPositive() ? timesLeft(balance.cap, { ...spent, epsilon: null }, { epsilon: null, rho: budget.rho, delta: Fraction.zero }) : 0n
-  return onPure > onRho ? onPure : onRho
 }
 
 function noteOf(balance: Balance, epsilon: Fraction | null): string {

@@ -197,4 +197,22 @@ export const refusals = {
     hint: 'The operator finds the cause in the log under reference {reference}',
     why: 'the cause may hold a person’s value and is kept from the reply',
   },
+  'pull.unreachable': {
+    sqlstate: '58000',
+    message: 'the lobby cannot reach hedgerow to answer this statement',
+    hint: 'Run the statement again; if it fails again, ask whoever operates Hedgerow',
+    why: 'the answer comes from Hedgerow, over a connection of the lobby’s own',
+  },
+  'names.hidden': {
+    sqlstate: '42501',
+    message: 'the temporary relation {name} hides the private table of the same name',
+    hint: 'Drop or rename it, or write the private table with its schema',
+    why: 'one name with two meanings would be charged for by mistake',
+  },
+  'shell.closed': {
+    sqlstate: '42501',
+    message: 'rows of {table} are people’s rows and cannot be read',
+    hint: 'Aggregate them in a statement of its own, for example SELECT count(*) FROM {table}',
+    why: 'the lobby holds no rows; whatever gets past the gate raises instead of answering',
+  },
 } as const satisfies Readonly<Record<string, RefusalRow>>

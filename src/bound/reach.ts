@@ -1,4 +1,4 @@
-import type { Reach } from '../noise/choose.ts'
+import type { Reach } from '../base/reach.ts'
 import type { ReleasePlan, Total } from '../plan/release-plan.ts'
 
 function size(value: bigint): bigint {

@@ -12,7 +12,7 @@ export function tableText(columns: readonly string[], rows: readonly (readonly C
 }
 
 async function rowsOf(client: pg.Client, text: string): Promise<{ readonly columns: readonly string[]; readonly rows: readonly (readonly Cell[])[] }> {
-  const result = await client.query<Cell[]>({ text, rowMode: 'array' })
+  const result = await client.query<Cell[]>({ text, rowMode: 'array', types: { getTypeParser: () => (value: string) => value } })
   return { columns: result.fields.map(field => field.name), rows: result.rows }
 }
 

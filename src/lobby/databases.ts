@@ -114,7 +114,7 @@ export async function setDatabaseDefaults(client: pg.Client, policies: Policies,
       ['hedgerow.noise', 'auto'],
       ['hedgerow.groups', ''],
       ['hedgerow.rows', ''],
-      ['hedgerow.replay', 'on'],
+      ['hedgerow.replay', 'off'],
       ['hedgerow.nonnegative', 'off'],
     ]
     await setOn(client, `DATABASE ${database}`, defaults, superuser, warn)

@@ -1,19 +1,10 @@
 import { check } from '../base/check.ts'
 import { Fraction } from '../base/fraction.ts'
+import type { Reach } from '../base/reach.ts'
 import { roundSignificant } from '../base/significant.ts'
 import { epsilonOfLaplace, gaussianFor, laplaceFor, laplaceForRho, rhoOfGaussian, rhoOfLaplace } from './calibrate.ts'
 import type { Mechanism } from './make-mechanism.ts'
 import { varianceOf } from './mechanism.ts'
-
-/** One person's reach in one total of a release, in integer units. */
-export interface Reach {
-  /** Groups a person may touch, at least 1. */
-  readonly groups: bigint
-  /** What one person moves the total by in one group; for twins the bound on the sum of both moves. A total that nobody can move (0) is treated as 1. */
-  readonly each: bigint
-  /** 2: twin totals, which draw from the same mechanism each. */
-  readonly coordinates: 1 | 2
-}
 
 export type Wish = 'auto' | 'laplace' | 'gaussian'
 

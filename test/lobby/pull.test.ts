@@ -42,7 +42,7 @@ describe('a pull', () => {
       timeZone: 'Asia/Kathmandu',
       application: 'ledger of the pier',
     })
-    expect(request?.settings).toEqual({ epsilon: '0.25', margin: '5%', delta: '1e-8', confidence: '0.95', noise: 'auto', replay: 'on', nonnegative: 'off' })
+    expect(request?.settings).toEqual({ epsilon: '0.25', margin: '5%', delta: '1e-8', confidence: '0.95', noise: 'auto', replay: 'off', nonnegative: 'off' })
     expect(request?.now).toMatch(/^\d{4}-\d\d-\d\dT\d\d:\d\d:\d\d(\.\d+)?\+05:45$/)
     expect(Date.parse(request?.statement ?? '')).not.toBeNaN()
   })
