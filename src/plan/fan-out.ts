@@ -14,6 +14,8 @@ export interface FanOut {
   readonly capped: ReadonlyMap<number, bigint>
   /** Published scans joined other than on a unique key: each may have `listedRows` rows, which the lobby counts before anything is debited. */
   readonly counted: readonly number[]
+  /** Private scans whose rows make the rows of the relation: every other scan has at most one row for each of theirs. */
+  readonly leaves: ReadonlySet<number>
   /** Whether a person has at most one row in the whole relation. */
   readonly single: boolean
 }
@@ -71,9 +73,10 @@ export function fanOut(owned: Owned): FanOut {
     known = close(owned, new Set([...known, next.index]), scans)
   }
   const own = leaves.filter(scan => scan.table.kind === 'private')
+  const ownLeaves = new Set(own.map(scan => scan.index))
   const counted = leaves.filter(scan => scan.table.kind !== 'private')
   const single = leaves.length === 0
-  if (leaves.length <= 1 && counted.length === 0) return { determined, capped: new Map(), counted: [], single }
+  if (leaves.length <= 1 && counted.length === 0) return { determined, capped: new Map(), counted: [], leaves: ownLeaves, single }
   const published = listedRows ** BigInt(counted.length)
   const each = root(joinedRows / published, own.length)
   if (counted.length > 2 || (own.length > 0 && each < 4n)) refuse('join.fan-out', { ceiling: listedRows.toString() }, leaves.at(-1)?.at ?? -1)
@@ -83,7 +86,7 @@ export function fanOut(owned: Owned): FanOut {
     if (scan.table.kind === 'private' && scan.table.owner.kind !== 'column') refuse('join.fan-out', { ceiling: listedRows.toString() }, scan.at)
     capped.set(scan.index, each)
   }
-  return { determined, capped, counted: counted.map(scan => scan.index), single: false }
+  return { determined, capped, counted: counted.map(scan => scan.index), leaves: ownLeaves, single: false }
 }
 
 /** The largest whole number whose `power`-th power is at most `value`. */

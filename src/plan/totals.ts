@@ -52,7 +52,7 @@ function checkPadding<A extends Aggregate>(aggregate: A, what: string, owned: Ow
 /** Rows of a person that count in one group: those of the table whose rows are counted, or fewer where the analyst says so. */
 export function rowsFor(reads: ReadonlySet<number>, owned: Owned, fanOut: FanOut, limit: bigint | null): bigint {
   if (fanOut.single) return 1n
-  const many = [...scansIn(owned.source)].filter(scan => scan.table.kind === 'private' && !fanOut.determined.has(scan.index))
+  const many = [...scansIn(owned.source)].filter(scan => fanOut.leaves.has(scan.index))
   const read = many.filter(scan => reads.has(scan.index))
   const tables = (read.length > 0 ? read : many).map(boundsOf)
   const rows = tables.map(bounds => bounds.rows).reduce((a, b) => (a > b ? a : b), 1n)
@@ -62,7 +62,7 @@ export function rowsFor(reads: ReadonlySet<number>, owned: Owned, fanOut: FanOut
 /** Groups a person may touch. */
 export function groupsFor(owned: Owned, fanOut: FanOut, limit: bigint | null): bigint {
   const scans = [...scansIn(owned.source)].filter(scan => scan.table.kind === 'private')
-  const many = scans.filter(scan => !fanOut.determined.has(scan.index))
+  const many = scans.filter(scan => fanOut.leaves.has(scan.index))
   const groups = (many.length > 0 ? many : scans).map(scan => boundsOf(scan).groups).reduce((a, b) => (a > b ? a : b), 1n)
   return limit !== null && limit < groups ? limit : groups
 }
