@@ -43,6 +43,8 @@ export interface HedgerowOptions {
   readonly random: RandomBytes
   /** For tests and the demo alone: a ledger on a server that may forget in a crash. */
   readonly allowUnsafeLedger?: boolean
+  /** How many replies later than their own instant an account may have within an hour before it is paused. */
+  readonly overrunsAnHour?: number
 }
 
 export interface Hedgerow {
@@ -105,7 +107,7 @@ export async function startHedgerow(options: HedgerowOptions): Promise<Hedgerow>
       slots: createSlots(vaultPlaces),
       statements: createStatementLog(),
       lastAnswers: createLastAnswers(),
-      overruns: createOverruns(overrunsAnHour, log),
+      overruns: createOverruns(options.overrunsAnHour ?? overrunsAnHour, log),
       deadlineMs: options.statementTimeoutMs,
       inForce: current,
     })
