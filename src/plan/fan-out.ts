@@ -3,9 +3,9 @@ import type { Owned } from './owned.ts'
 import { type ColumnRef, type Scan, scansIn } from './relation.ts'
 
 /** Rows a person may have after all joins, at the most: beyond it, time would tell. */
-const joinedRows = 100_000n
+const joinedRows = 10_000n
 /** Rows a published side may have where it is not joined on a unique key. */
-export const listedRows = 400n
+export const listedRows = 100n
 
 export interface FanOut {
   /** Scans with at most one row for each person. */

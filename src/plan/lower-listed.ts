@@ -1,5 +1,6 @@
 import { refuse } from '../base/refusal.ts'
 import type { CatalogType } from '../catalog/catalog.ts'
+import { castTo } from '../catalog/functions/casts.ts'
 import { settle } from '../catalog/functions/comparisons.ts'
 import { isFixed, type Scalar } from '../catalog/scalar.ts'
 import { promote, isNumber, scalarType, type ScalarType } from '../catalog/scalar-type.ts'
@@ -58,8 +59,10 @@ export function lowerListed(item: Extract<FromItem, { kind: 'function' }>, conte
   const call = only?.call
   if (call?.kind !== 'call' || more !== undefined || call.name.at(-1) !== 'generate_series' || item.rowsFrom || item.ordinality || item.definitions.length > 0)
     return refuse('block.mixed', { what: 'a function in FROM other than generate_series' }, item.at)
-  const args = call.args.map(arg => fixed(lowerExpr(arg, nowhere, context)))
-  const type = seriesType(args, item.at)
+  const written = call.args.map(arg => fixed(lowerExpr(arg, nowhere, context)))
+  const type = seriesType(written, item.at)
+  const step = type.family === 'integer' ? type : scalarType('interval')
+  const args = written.map((arg, i) => castTo(arg, i === 2 ? step : type, arg.at))
   const name = item.alias?.columns[0] ?? item.alias?.name ?? 'generate_series'
   const table: ListedRows = { kind: 'listed', name: 'generate_series', source: { kind: 'series', args }, columns: new Map([[name, columnOf(name, type, true)]]) }
   const made = scanOf(table, context, item.at)
