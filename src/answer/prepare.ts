@@ -23,8 +23,8 @@ export async function prepare(plan: ReleasePlan, timeZone: string, lobby: Lobby)
   const fixed = await computeFixed(plan, timeZone, lobby)
   for (const scan of plan.fanOut.counted) {
     const rows = await lobby.published(plan.dataSet.name, printQuery(countSql(plan, scan, listedRows, fixed)), [], timeZone, 1)
-    const count = rows === 'too-many' ? null : rows[0]?.[0]
-    if (count == null || BigInt(count) > listedRows) refuse('join.fan-out', { ceiling: listedRows.toString() })
+    const count = rows === 'too-many' ? null : (rows[0]?.[0] ?? null)
+    if (count === null || BigInt(count) > listedRows) refuse('join.fan-out', { ceiling: listedRows.toString() })
   }
   const listed = plan.groups.kind === 'listed' ? await listGroups(plan, fixed, timeZone, lobby) : null
   return { fixed, listed, groups: groupsTouched(plan, listed === null ? null : BigInt(listed.length || 1)) }

@@ -1,4 +1,4 @@
-import { Fraction } from '../base/fraction.ts'
+import type { Fraction } from '../base/fraction.ts'
 import { epsilonSpent } from '../budget/left.ts'
 import type { Balance, Ledger } from '../budget/ledger.ts'
 import type { DataSet, Policies, PrivateTable } from '../policy/data-set.ts'

@@ -27,16 +27,6 @@ export async function openSession(url: string, settings: Readonly<Record<string,
   return client
 }
 
-/** Opens, works, closes. */
-export async function withSession<T>(url: string, work: (client: pg.Client) => Promise<T>): Promise<T> {
-  const client = await openSession(url)
-  try {
-    return await work(client)
-  } finally {
-    await client.end().catch(() => undefined)
-  }
-}
-
 /** The rows of one query, as text. */
 export async function rowsOf(client: pg.ClientBase, text: string, values: readonly unknown[] = []): Promise<readonly TextRow[]> {
   const result = await client.query<(string | null)[]>({ text, values: [...values], rowMode: 'array' })

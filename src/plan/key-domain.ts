@@ -12,8 +12,8 @@ export function domainOf(scalar: Scalar, key: number, scans: readonly Scan[]): L
   const node = scalar.node
   if (node.kind === 'column') {
     const column = columnOf(node.scan, node.column, scans)
-    if (column?.valuesFrom == null) return null
-    return { kind: 'column', key, table: column.valuesFrom.table, column: column.valuesFrom.column, nullable: scalar.nullable }
+    const from = column?.valuesFrom ?? null
+    return from === null ? null : { kind: 'column', key, table: from.table, column: from.column, nullable: scalar.nullable }
   }
   if (node.kind === 'apply' && (node.form === 'date-trunc' || node.form === 'extract') && isClamped(scalar)) return steps(scalar, node, key)
   return null

@@ -5,7 +5,7 @@ import { isNumber, scalarType } from '../catalog/scalar-type.ts'
 import { settle } from '../catalog/functions/comparisons.ts'
 import { columnOf, domainOf } from './key-domain.ts'
 import type { Key, ListFactor } from './release-plan.ts'
-import { indexesIn, isPrivate, scansIn, type Scan, type Source } from './relation.ts'
+import { indexesIn, isPrivate, type Scan, type Source } from './relation.ts'
 
 /** A key as it is grouped by. Refused: what names a person, and types whose equal values print apart. */
 export function keyOf(scalar: Scalar, scans: readonly Scan[]): Key {
@@ -92,8 +92,4 @@ export function listsOf(keys: readonly Key[], source: Source, tests: readonly Sc
 /** Whether every key is a function of what a person has only once, so that each person is in one group by nature. */
 export function isOneGroupByNature(keys: readonly Key[], determined: ReadonlySet<number>): boolean {
   return keys.every(key => [...scansOf(key.scalar)].every(scan => determined.has(scan)))
-}
-
-export function privateScans(source: Source): readonly Scan[] {
-  return [...scansIn(source)].filter(scan => scan.table.kind === 'private')
 }

@@ -39,11 +39,6 @@ export function findColumn(scope: Scope, name: readonly string[]): Scalar | null
   return null
 }
 
-/** Whether the name of a table or alias is one of FROM's. */
-export function hasItem(scope: Scope, name: string): boolean {
-  return scope.items.some(item => item.name === name)
-}
-
 /** Two scopes side by side. */
 export function besides(a: Scope, b: Scope): Scope {
   return { items: [...a.items, ...b.items], star: [...a.star, ...b.star] }

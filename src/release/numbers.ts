@@ -8,7 +8,7 @@ export function decimalOf(value: Fraction, step: Fraction): string {
 /** Decimal places in which every multiple of the step is exact; at most 20 where it is no decimal. */
 export function placesOf(step: Fraction): number {
   let places = 0
-  for (let d = step.d; places < 20 && 10n ** BigInt(places) % d !== 0n; ) places += 1
+  while (places < 20 && 10n ** BigInt(places) % step.d !== 0n) places += 1
   return places
 }
 

@@ -45,8 +45,6 @@ export function ferryGate(user: string, database: string): Gate & { readonly jud
   }
 }
 
-export const quiet: Log = () => undefined
-
 export async function testLobby(options: Partial<WireOptions> = {}): Promise<TestLobby> {
   const server = await testServer()
   const database = new URL(await server.createDatabase('wire')).pathname.slice(1)

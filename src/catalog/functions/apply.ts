@@ -10,7 +10,7 @@ interface More {
 }
 
 /** A node over the row `form`; the resolvers in this folder are the only callers, so that every expression is one of the table. */
-export function apply(form: FormName | string, args: readonly Scalar[], type: ScalarType, more: More): Scalar {
+export function apply(form: FormName, args: readonly Scalar[], type: ScalarType, more: More): Scalar {
   formOf(form)
   return {
     type,

@@ -1,5 +1,5 @@
 import { refuse } from '../../base/refusal.ts'
-import { isFixed, type Scalar } from '../scalar.ts'
+import type { Scalar } from '../scalar.ts'
 import { isNumber, sameType, scalarType, type ScalarType } from '../scalar-type.ts'
 import { apply } from './apply.ts'
 import { comparable } from './numbers.ts'
@@ -44,9 +44,4 @@ export function inList(arg: Scalar, list: readonly Scalar[], negated: boolean, a
     comparable(settled, entry)
   }
   return apply(negated ? 'not-in' : 'in', [settled, ...entries], bool, { at })
-}
-
-/** Whether a value may be put into a comparison as it stands. */
-export function isPlain(scalar: Scalar): boolean {
-  return scalar.node.kind === 'column' || isFixed(scalar)
 }

@@ -3,6 +3,7 @@ import { refuse } from '../../base/refusal.ts'
 import { isFixed, type Range, type Scalar } from '../scalar.ts'
 import { isNumber, promote, scalarType, type ScalarType } from '../scalar-type.ts'
 import { apply } from './apply.ts'
+import type { FormName } from './forms.ts'
 
 const two62 = Fraction.make(2n ** 62n)
 const two31 = Fraction.make(2n ** 31n)
@@ -60,7 +61,7 @@ function isInteger(scalar: Scalar): boolean {
 }
 
 /** An operation on numbers: its operands brought to a type in which the proved result fits. */
-function compute(form: string, args: readonly Scalar[], type: ScalarType, range: Range, at: number, words: readonly string[] = []): Scalar {
+function compute(form: FormName, args: readonly Scalar[], type: ScalarType, range: Range, at: number, words: readonly string[] = []): Scalar {
   const size = args.reduce((most, arg) => most.max(largest(rangeOf(arg))), largest(range))
   if (type.family === 'integer' && args.every(isInteger)) {
     const narrow = type.name !== 'int2' && size.isLess(two31) && args.every(arg => arg.carrier === 'own' && arg.type.name !== 'int2')

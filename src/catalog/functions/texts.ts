@@ -3,6 +3,7 @@ import type { Scalar } from '../scalar.ts'
 import { scalarType } from '../scalar-type.ts'
 import { apply } from './apply.ts'
 import { settle } from './comparisons.ts'
+import type { FormName } from './forms.ts'
 
 const textType = scalarType('text')
 
@@ -27,7 +28,7 @@ export function concat(left: Scalar, right: Scalar, at: number): Scalar {
   return apply('concat', [asText(left, '||', at), asText(right, '||', at)], textType, { at })
 }
 
-const plain: Readonly<Record<string, string>> = { lower: 'lower', upper: 'upper', btrim: 'btrim', ltrim: 'ltrim', rtrim: 'rtrim' }
+const plain: Readonly<Record<string, FormName>> = { lower: 'lower', upper: 'upper', btrim: 'btrim', ltrim: 'ltrim', rtrim: 'rtrim' }
 const lengths: ReadonlySet<string> = new Set(['length', 'char_length', 'character_length'])
 
 /** Functions of text; null where the name is none of them. */
