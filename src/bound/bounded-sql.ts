@@ -3,7 +3,7 @@ import type { ReleasePlan, Total } from '../plan/release-plan.ts'
 import type { Expr, FromItem, GroupItem, Query, Target } from '../sql/tree.ts'
 import { pickOrder } from './pick-order.ts'
 import { type FixedValues, printKey, printScalar, scanName } from './print-scalar.ts'
-import { allOf, plainFrame, printSource, readColumns, selectQuery, subquery, target } from './print-source.ts'
+import { allOf, paddedIn, plainFrame, printSource, readColumns, selectQuery, subquery, target } from './print-source.ts'
 
 function positions(count: number): readonly GroupItem[] {
   return Array.from({ length: count }, (_, i) => ({ kind: 'expression', value: integer(BigInt(i + 1)) }))
@@ -45,7 +45,7 @@ interface Relation {
 
 function relation(plan: ReleasePlan, fixed: FixedValues): Relation {
   const everywhere = plan.owned.source.kind === 'filter' ? plan.owned.source.tests : []
-  const printed = printSource(plan.owned.source, { fixed, read: readColumns(plan), capped: plan.fanOut.capped, counted: plan.fanOut.counted, everywhere })
+  const printed = printSource(plan.owned.source, { fixed, read: readColumns(plan), capped: plan.fanOut.capped, counted: plan.fanOut.counted, everywhere, padded: paddedIn(plan.owned.source) })
   const person = column(scanName(plan.owned.person.scan), plan.owned.person.column)
   const tests = [...printed.tests.map(test => printScalar(test, fixed)), ...listedOnly(plan, fixed), isNull(person, true)]
   return { from: printed.from, where: allOf(tests) ?? isNull(person, true), person, keys: plan.keys.map((key, i) => target(printKey(key.scalar, fixed), keyName(i))) }

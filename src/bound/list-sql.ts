@@ -52,7 +52,7 @@ function factorSql(plan: ReleasePlan, factor: ListFactor, fixed: FixedValues): Q
     }
     case 'component': {
       const names = factor.keys.map(key => `k${key.toString()}`)
-      const printed = printSource(factor.source, { fixed, read: new Map(), capped: new Map(), counted: [], everywhere: [] })
+      const printed = printSource(factor.source, { fixed, read: new Map(), capped: new Map(), counted: [], everywhere: [], padded: new Set() })
       const targets = factor.keys.map((key, i) => target(printKey(keyScalar(plan, key), fixed), names[i] ?? ''))
       return withNull(distinct(targets, printed.from, [...printed.tests, ...factor.tests].map(test => printScalar(test, fixed))), factor.padded, names)
     }
@@ -91,7 +91,7 @@ export function countSql(plan: ReleasePlan, scan: number, ceiling: bigint, fixed
   const found = plan.scans.find(each => each.index === scan)
   if (found === undefined) throw new RangeError('a count speaks of a scan the plan lacks')
   const source: Source = { kind: 'scan', scan: found }
-  const printed = printSource(source, { fixed, read: new Map(), capped: new Map(), counted: [], everywhere: [] })
+  const printed = printSource(source, { fixed, read: new Map(), capped: new Map(), counted: [], everywhere: [], padded: new Set() })
   const rows = selectQuery({ targets: [target(text(''), 'row')], from: [printed.from] })
   const limited: Query = { ...rows, limit: cast(text((ceiling + 1n).toString()), 'int8') }
   return selectQuery({ targets: [target(cast(call('count', [], { star: true }), 'text'), 'count')], from: [subquery(limited, 'counted')] })

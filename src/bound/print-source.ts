@@ -2,7 +2,7 @@ import { cast, call, column, constant, integer, logic, operator } from '../catal
 import { parts, scansOf, type Scalar } from '../catalog/scalar.ts'
 import { listedRows } from '../plan/fan-out.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
-import type { Scan, Source } from '../plan/relation.ts'
+import { indexesIn, type Scan, type Source } from '../plan/relation.ts'
 import type { Expr, FromItem, Query, Select, Target } from '../sql/tree.ts'
 import { type FixedValues, printOwn, printScalar, scanName } from './print-scalar.ts'
 
@@ -83,6 +83,20 @@ export interface SourceContext {
   readonly counted: readonly number[]
   /** Conditions that hold on every row of the relation: one on a capped scan alone is applied before its cap as well. */
   readonly everywhere: readonly Scalar[]
+  /** Scans on the padded side of a LEFT JOIN: a condition applied before it would make padding rows. */
+  readonly padded: ReadonlySet<number>
+}
+
+/** Scans on the right of some LEFT JOIN. */
+export function paddedIn(source: Source): ReadonlySet<number> {
+  switch (source.kind) {
+    case 'scan':
+      return new Set()
+    case 'filter':
+      return paddedIn(source.input)
+    case 'join':
+      return new Set([...paddedIn(source.left), ...(source.type === 'left' ? indexesIn(source.right) : paddedIn(source.right))])
+  }
 }
 
 /** FROM as SQL, and the conditions left for WHERE. A filter below the padded side of a LEFT JOIN moves into its ON, which means the same. */
@@ -126,6 +140,7 @@ function printCapped(scan: Scan, plain: FromItem, columns: readonly string[], ca
   const alias = scanName(scan.index)
   const owner = scan.table.kind === 'private' && scan.table.owner.kind === 'column' ? scan.table.owner.column : ''
   const tests = context.everywhere.filter(test => {
+    if (context.padded.has(scan.index)) return false
     const scans = scansOf(test)
     return scans.size === 1 && scans.has(scan.index)
   })

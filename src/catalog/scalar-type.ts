@@ -1,6 +1,6 @@
 import type { CatalogType } from './catalog.ts'
 
-export type Family = 'bool' | 'integer' | 'numeric' | 'float' | 'text' | 'date' | 'timestamp' | 'timestamptz' | 'time' | 'interval' | 'uuid' | 'enum' | 'unknown'
+export type Family = 'bool' | 'integer' | 'numeric' | 'float' | 'text' | 'date' | 'timestamp' | 'timestamptz' | 'time' | 'interval' | 'uuid' | 'enum' | 'unknown' | 'opaque'
 
 /** A type that an expression over private rows may have. */
 export interface ScalarType {
@@ -36,12 +36,17 @@ export function scalarType(name: string): ScalarType {
   return { schema: 'pg_catalog', name, family }
 }
 
-/** A column's type as an expression sees it, or null where no expression over private rows may use it. */
+/** A column's type as an expression sees it, or null where an expression may only ask whether it is NULL. */
 export function scalarTypeOf(type: CatalogType): ScalarType | null {
   if (type.kind === 'enum') return { schema: type.schema, name: type.name, family: 'enum' }
   if (type.kind !== 'base' || type.schema !== 'pg_catalog') return null
   const family = families[type.name]
   return family === undefined || family === 'unknown' ? null : { schema: 'pg_catalog', name: type.name, family }
+}
+
+/** A type whose values are counted or tested for NULL, and nothing else: json, arrays, domains and the like. */
+export function opaqueType(type: CatalogType): ScalarType {
+  return { schema: type.schema, name: type.name, family: 'opaque' }
 }
 
 const printedNames: Readonly<Record<string, string>> = {

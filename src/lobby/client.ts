@@ -74,7 +74,7 @@ class DataSetPool {
     await Promise.all(this.#idle.splice(0).map((client) => client.end().catch(() => undefined)))
   }
   async #open(): Promise<pg.Client> {
-    const client = await openSession(this.#url, { statement_timeout: String(this.#timeoutMs), row_security: 'on', client_min_messages: 'error', role: 'hedgerow_reader' })
+    const client = await openSession(this.#url, { statement_timeout: String(this.#timeoutMs), row_security: 'on', client_min_messages: 'error', DateStyle: 'ISO, MDY', IntervalStyle: 'postgres', extra_float_digits: '1', role: 'hedgerow_reader' })
     client.on('end', () => {
       const at = this.#idle.indexOf(client)
       if (at >= 0) this.#idle.splice(at, 1)

@@ -1,10 +1,11 @@
 import { check } from '../base/check.ts'
 import { refuse, withFacts } from '../base/refusal.ts'
+import { scalarTypeOf } from '../catalog/scalar-type.ts'
 import type { Expr, Query, Select } from '../sql/tree.ts'
 import { asAggregate } from './aggregates.ts'
 import type { Context } from './context.ts'
 import { exampleFor } from './example.ts'
-import { fanOut } from './fan-out.ts'
+import { type FanOut, fanOut, listedRows } from './fan-out.ts'
 import { groupsFor, lowerAggregate, totalsOf } from './totals.ts'
 import { isOneGroupByNature, keyOf, listsOf } from './keys.ts'
 import type { Limits } from './limits.ts'
@@ -40,6 +41,7 @@ function plan(query: Query, outer: Context, limits: Limits): ReleasePlan {
   const aggregates = calls.map(call => lowerAggregate(call, from.scope, owned, context))
   const made = totalsOf(aggregates, owned, spread, limits.rows, context.scans)
   const { groups, totals } = groupsOf(keys, listsOf(keys, from.source, where, context.scans), made.totals)
+  refuseOpaqueCaps(spread, context)
   const natural = keys.length === 0 || isOneGroupByNature(keys, spread.determined)
   return {
     dataSet: context.dataSet,
@@ -54,6 +56,14 @@ function plan(query: Query, outer: Context, limits: Limits): ReleasePlan {
     groupsPerPerson: natural ? 1n : groupsFor(owned, spread, limits.groups),
     oneGroupByNature: natural,
   } satisfies ReleasePlan
+}
+
+/** A capped scan is put in a total order over what is read of it, which such columns do not have. */
+function refuseOpaqueCaps(spread: FanOut, context: Context): void {
+  for (const scan of context.scans) {
+    if (!spread.capped.has(scan.index)) continue
+    for (const column of scan.table.columns.values()) if (scalarTypeOf(column.type) === null) refuse('join.fan-out', { ceiling: listedRows.toString() }, scan.at)
+  }
 }
 
 function groupsOf(keys: ReleasePlan['keys'], factors: ReturnType<typeof listsOf>, totals: readonly Total[]): { readonly groups: Groups; readonly totals: readonly Total[] } {

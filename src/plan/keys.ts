@@ -16,7 +16,7 @@ export function keyOf(scalar: Scalar, scans: readonly Scan[]): Key {
     if (column?.role === 'linking' && isPrivateScan(part.node.scan, scans)) refuse('rows.person', { column: column.name }, part.at)
     if (column !== null && !column.deterministic) refuse('keys.form', { type: `${column.type.printed} under its collation` }, part.at)
   }
-  if (settled.type.family === 'interval') refuse('keys.form', { type: settled.type.name }, scalar.at)
+  if (settled.type.family === 'interval' || settled.type.family === 'opaque') refuse('keys.form', { type: settled.type.name }, scalar.at)
   if (isNumber(settled.type) && settled.carrier !== 'own') fits(settled)
   return { scalar: settled, type: settled.type }
 }

@@ -1,7 +1,6 @@
 import { Fraction } from '../base/fraction.ts'
-import { refuse } from '../base/refusal.ts'
 import type { Clamp, Range, Scalar } from '../catalog/scalar.ts'
-import { scalarTypeOf, type ScalarType } from '../catalog/scalar-type.ts'
+import { opaqueType, scalarTypeOf, type ScalarType } from '../catalog/scalar-type.ts'
 import type { DataColumn } from '../policy/data-set.ts'
 
 const integers: Readonly<Record<string, bigint>> = { int2: 2n ** 15n, int4: 2n ** 31n, int8: 2n ** 63n }
@@ -20,8 +19,7 @@ function rangeOfType(type: ScalarType, column: DataColumn): Range | null {
 
 /** A column of a scan as an expression sees it. */
 export function lowerColumn(scan: number, column: DataColumn, at: number): Scalar {
-  const type = scalarTypeOf(column.type)
-  if (type === null) refuse('expr.unsupported', { what: `column "${column.name}" of type ${column.type.printed}` }, at)
+  const type = scalarTypeOf(column.type) ?? opaqueType(column.type)
   const offers: Clamp | null = column.clamp === null ? null : { low: column.clamp[0], high: column.clamp[1], step: column.step }
   // a numeric column may hold NaN, which no range covers: its range counts only once it is clamped
   const range = rangeOfType(type, column)

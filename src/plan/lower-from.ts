@@ -48,18 +48,9 @@ function lowerTable(item: Extract<FromItem, { kind: 'table' }>, context: Context
   if (table === null) return refuse('block.mixed', { what: `"${item.name.join('.')}"` }, item.at)
   const scan: Scan = { index: context.scans.length, table, at: item.at }
   context.scans.push(scan)
-  const columns = [...table.columns.values()].map((column, i): VisibleColumn => ({ name: item.alias?.columns[i] ?? column.name, scalar: visible(scan, column.name, column, item.at) }))
+  const columns = [...table.columns.values()].map((column, i): VisibleColumn => ({ name: item.alias?.columns[i] ?? column.name, scalar: lowerColumn(scan.index, column, item.at) }))
   const scope: Scope = { items: [{ name: item.alias?.name ?? table.name, schema: item.alias === null ? table.schema : '', columns }], star: columns }
   return { source: { kind: 'scan', scan }, scope }
-}
-
-/** A column whose type no expression may use is visible all the same; using it is what gets refused. */
-function visible(scan: Scan, name: string, column: Parameters<typeof lowerColumn>[1], at: number): Scalar {
-  return { ...lowerColumn(scan.index, column, at), node: { ...columnNode(scan.index, name, column) } }
-}
-
-function columnNode(scan: number, name: string, column: Parameters<typeof lowerColumn>[1]): Scalar['node'] {
-  return { kind: 'column', scan, column: name, clamped: null, offers: column.clamp === null ? null : { low: column.clamp[0], high: column.clamp[1], step: column.step } }
 }
 
 function lowerDerived(query: Query, alias: Alias | null, context: Context, at: number, columnNames: readonly string[] = []): Lowered {

@@ -12,7 +12,7 @@ function match(a: ScalarType, b: ScalarType): boolean {
   if (isNumber(a) && isNumber(b)) return true
   if (instants.has(a.family) && instants.has(b.family)) return true
   if (a.family === 'enum' || b.family === 'enum') return sameType(a, b)
-  return a.family === b.family && a.family !== 'unknown'
+  return a.family === b.family && a.family !== 'unknown' && a.family !== 'opaque'
 }
 
 /** A bare string takes the type of what it is compared with; the lobby has already read it as that type. */
