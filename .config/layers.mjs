@@ -67,6 +67,20 @@ export default {
       to: { path: '^src/release/exact\\.ts$' },
     },
     {
+      name: 'bounded-door',
+      comment: 'what the vault runs is made in bound, asked for in answer and run in vault, nowhere else',
+      severity: 'error',
+      from: { path: '^src/', pathNot: below(['bound', 'answer', 'vault']) },
+      to: { path: '^src/bound/bounded-query\\.ts$' },
+    },
+    {
+      name: 'vault-door',
+      comment: 'the vault is asked through ask.ts, which takes no text',
+      severity: 'error',
+      from: { path: '^src/', pathNot: '^src/vault/ask\\.ts$' },
+      to: { path: '^src/vault/run\\.ts$' },
+    },
+    {
       name: 'settings-at-the-top',
       comment: 'settings are read where the program is joined, and handed down as values',
       severity: 'error',

@@ -5,7 +5,10 @@ import type { Query } from '../sql/tree.ts'
 import { boundedSql, type Draw } from './bounded-sql.ts'
 import type { FixedValues } from './print-scalar.ts'
 
-/** A text the vault may run: made here only, from a plan, and never from an analyst's text. ONE DOOR. */
+/**
+ * A text the vault may run: made here only, from a plan, and never from an analyst's text. Nothing is bound to it: every constant stands in the text, quoted by
+ * our own printer. ONE DOOR.
+ */
 export class BoundedQuery {
   readonly #text: string
   readonly #tree: Query
@@ -26,10 +29,6 @@ export class BoundedQuery {
   }
   get text(): string {
     return this.#text
-  }
-  /** Nothing is bound: every constant stands in the text, quoted by our own printer. */
-  get values(): readonly string[] {
-    return []
   }
   get tree(): Query {
     return this.#tree

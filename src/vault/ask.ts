@@ -1,7 +1,8 @@
+import { check } from '../base/check.ts'
 import { Failure } from '../base/failure.ts'
 import type { Log } from '../base/ports.ts'
+import { BoundedQuery } from '../bound/bounded-query.ts'
 import type { ExactTable } from '../release/exact.ts'
-import type { VaultQuery } from '../release/vault-query.ts'
 import type { CatalogClient } from './catalog.ts'
 import { openVaultConnections } from './connections.ts'
 import { runQuery } from './run.ts'
@@ -34,10 +35,10 @@ export interface Vault {
   /** What is wrong with the role Hedgerow was given, one sentence each. */
   readonly warnings: readonly string[]
   /**
-   * Runs one query in a read-only snapshot of its own. Rejects with Failure('vault'), Failure('deadline'), Failure('internal') for an answer of another shape, or the
+   * Runs one query, which nothing but a plan can make, in a read-only snapshot of its own. Rejects with Failure('vault'), Failure('deadline'), Failure('internal') for an answer of another shape, or the
    * signal's reason, at that instant; the query is then stopped in the vault and its connection cut. Nothing that the vault says in an error is kept.
    */
-  ask(query: VaultQuery, options: AskOptions): Promise<ExactTable>
+  ask(query: BoundedQuery, options: AskOptions): Promise<ExactTable>
   /** A read-only snapshot for the reader of the catalogue. Errors of the server become Failure('vault'); what `work` throws itself passes through. */
   session<T>(work: (client: CatalogClient) => Promise<T>): Promise<T>
   close(): Promise<void>
@@ -58,6 +59,7 @@ export async function connectVault(settings: VaultOptions): Promise<Vault> {
     serverVersion: standing.serverVersion,
     warnings: standing.warnings,
     ask: async (query, { timeZone, deadlineMs, signal }) => {
+      check(query instanceof BoundedQuery, 'the vault runs bounded queries only')
       signal.throwIfAborted()
       const timeoutMs = Math.max(1, Math.min(statementTimeoutMs, deadlineMs))
       const run = runQuery(connections, query, { timeZone, timeoutMs, workMemKb, rowCeiling, byteCeiling, noticesLostClients: standing.noticesLostClients })

@@ -3,9 +3,9 @@ import { Query } from 'pg'
 import type { PoolClient } from 'pg'
 import { BrokenCheck } from '../base/check.ts'
 import { Failure } from '../base/failure.ts'
+import type { BoundedQuery } from '../bound/bounded-query.ts'
 import { exactRow, sealExact } from '../release/exact.ts'
 import type { ExactRow, ExactTable } from '../release/exact.ts'
-import type { VaultQuery } from '../release/vault-query.ts'
 import { asText, giveBack } from './connections.ts'
 import type { TextRow, VaultConnections } from './connections.ts'
 
@@ -25,7 +25,7 @@ export interface Running {
 }
 
 /** Starts the query; the caller cuts it when it is no longer waited for, also after `result` rejected. */
-export function runQuery(connections: VaultConnections, query: VaultQuery, options: RunOptions): Running {
+export function runQuery(connections: VaultConnections, query: BoundedQuery, options: RunOptions): Running {
   let over = false
   let held: { readonly client: PoolClient; pid: string } | null = null
 
@@ -95,11 +95,8 @@ async function begin(client: PoolClient, { timeZone, timeoutMs, workMemKb, notic
 }
 
 /** Rows are turned into bigints one by one as they arrive: nothing else of the answer is kept. */
-async function readRows(
-  client: PoolClient,
-  { text, values, keyCount, totalCount }: VaultQuery,
-  { rowCeiling, byteCeiling }: RunOptions,
-): Promise<readonly ExactRow[]> {
+async function readRows(client: PoolClient, query: BoundedQuery, { rowCeiling, byteCeiling }: RunOptions): Promise<readonly ExactRow[]> {
+  const { text, keyCount, totalCount } = query
   const socket = client.connection.stream as Socket
   const bytesBefore = socket.bytesRead
   const rows: ExactRow[] = []
@@ -112,7 +109,7 @@ async function readRows(
     }
     // One value can be a gigabyte long, and arrives as a row only when all of it is here.
     watch = setInterval(() => socket.bytesRead - bytesBefore > byteCeiling && fail(new Failure('vault')), 25)
-    const asked = new Query({ text, values: [...values], rowMode: 'array', types: asText, queryMode: 'extended' } as ConstructorParameters<typeof Query>[0])
+    const asked = new Query({ text, rowMode: 'array', types: asText, queryMode: 'extended' } as ConstructorParameters<typeof Query>[0])
     asked.on('row', (row: TextRow) => {
       if (!open) return
       if (rows.length >= rowCeiling) return fail(new Failure('vault'))

@@ -1,7 +1,6 @@
 import { connect, createServer, type AddressInfo, type Socket } from 'node:net'
 import pg from 'pg'
 import type { Gate, GateVerdict } from '../../src/answer/ports.ts'
-import type { Log } from '../../src/base/ports.ts'
 import { serveClients, type Wire } from '../../src/wire/listen.ts'
 import { wireCeilings, type WireOptions } from '../../src/wire/wire-options.ts'
 import { testServer, type TestServer } from '../harness/server.ts'
