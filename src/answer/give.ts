@@ -114,7 +114,7 @@ async function debited(accounts: Accounts, charge: Charge, reserve: Charge | nul
   if (outcome.kind === 'debited') return outcome
   const balance = outcome.balances.find(each => each.account === outcome.account)
   const asked = reserve === null ? charge : sum(charge, reserve)
-  return refuse('budget.spent', { account: accountCalled(outcome.account), epsilon: asked.epsilon === null ? `rho ${figure(asked.rho)}` : figure(asked.epsilon), left: balance === undefined ? 'nothing is left' : leftText(balance) })
+  return refuse('budget.spent', { account: accountCalled(outcome.account), asked: asked.epsilon === null ? `rho ${figure(asked.rho)}` : `epsilon ${figure(asked.epsilon)}`, left: balance === undefined ? 'nothing is left' : leftText(balance) })
 }
 
 /** What is left on both tracks, for people. */

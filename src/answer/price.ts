@@ -40,7 +40,7 @@ export function priceOf(plan: ReleasePlan, groups: bigint, blocks: number, setti
   const choice = choose(reaches, { epsilon: open ? budget.epsilon : null, rho: budget.rho }, settings.noise)
   if (choice === null) {
     if (settings.noise === 'gaussian') return refuse('setting.bad', { name: 'noise', value: 'gaussian', expected: 'laplace or auto: this account has no delta', sample: 'auto' })
-    return refuse('budget.spent', { account: 'your', epsilon: settings.epsilon.toDecimal(6, 'up'), left: 'no track of this account can bear it' })
+    return refuse('budget.spent', { account: 'your', asked: `epsilon ${settings.epsilon.toDecimal(6, 'up')}`, left: 'no track of this account can bear it' })
   }
   const taken = keepsPureTrack(plan, choice, settings, balance)
   const made = taken.candidate

@@ -169,7 +169,7 @@ export const refusals = {
   },
   'budget.spent': {
     sqlstate: '42501',
-    message: 'the {account} budget cannot bear this statement: it asks for epsilon {epsilon}, and {left}',
+    message: '{account} budget cannot bear this statement: it asks for {asked}, and {left}',
     hint: 'SELECT * FROM hedgerow.budget shows what is left; a smaller SET hedgerow.epsilon may still fit; only an administrator can raise the cap',
     why: 'the cap is the promise to the people in the data',
   },
