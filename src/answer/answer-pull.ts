@@ -1,10 +1,11 @@
 import { unreachable } from '../base/check.ts'
 import { Failure } from '../base/failure.ts'
-import { Refusal } from '../base/refusal.ts'
+import { completed, Refusal } from '../base/refusal.ts'
 import { accountsOf } from './accounts.ts'
 import { explainStatement } from './explain.ts'
 import { give } from './give.ts'
-import { dataSetFor } from './in-force.ts'
+import { exampleFor } from '../plan/example.ts'
+import { dataSetFor, dataSetOf } from './in-force.ts'
 import { noticeOf, outputsOf } from './notice.ts'
 import { planText } from './plan-text.ts'
 import type { AnswerPull, PullReply, PullRequest } from './ports.ts'
@@ -24,7 +25,7 @@ export function createAnswerPull(parts: PullParts): AnswerPull {
       return await dispatch(request, signal, parts)
     } catch (problem) {
       if (signal.aborted) return { kind: 'error', sqlstate: '57014', message: 'canceling statement due to user request', hint: '' }
-      return errorReply(problem, parts)
+      return errorReply(problem instanceof Refusal ? withExample(problem, request, parts) : problem, parts)
     }
   }
 }
@@ -72,6 +73,11 @@ async function answerBlock(request: PullRequest, signal: AbortSignal, parts: Pul
 
 function rowOf(labels: readonly string[], values: readonly (string | null)[]): Readonly<Record<string, string | null>> {
   return Object.fromEntries(labels.map((label, i) => [label, values[i] ?? null]))
+}
+
+function withExample(refusal: Refusal, request: PullRequest, parts: PullParts): Refusal {
+  const dataSet = dataSetOf(parts.inForce(), request.database)
+  return dataSet === null ? refusal : completed(refusal, { example: exampleFor(dataSet, null), person: dataSet.personCalled })
 }
 
 /** What the analyst hears of a problem: a refusal in full; the lobby's own complaint about the statement's own values; of anything else a code and a reference. */

@@ -1,9 +1,9 @@
-import { Refusal, refuse } from '../base/refusal.ts'
+import { completed, Refusal, refuse } from '../base/refusal.ts'
 import { cutStatement } from '../plan/cut.ts'
 import { noLimits } from '../plan/limits.ts'
 import { planBlock } from '../plan/block.ts'
 import { blockText, type BlockTypes, explainText, refusedText, rewritten } from '../plan/rewrite.ts'
-import { exampleFor } from '../plan/example.ts'
+import { exampleFor, exampleOf } from '../plan/example.ts'
 import type { DataSet } from '../policy/data-set.ts'
 import type { Parser, ReadStatement } from '../sql/parser.ts'
 import type { Describer } from './block-types.ts'
@@ -84,7 +84,7 @@ async function judgeStatement(placed: ReadStatement, slice: Buffer, request: Gat
   try {
     refuseClosed(placed, tables, mentions(slice), dataSet)
     if (tables.length === 0) return null
-    if (placed.refusal !== null) return refuse(placed.refusal.code, { example: exampleFor(dataSet, null), ...placed.refusal.facts }, placed.refusal.at)
+    if (placed.refusal !== null) return refuse(placed.refusal.code, placed.refusal.facts, placed.refusal.at)
     if (placed.statement.kind === 'other') return null
     return await rewrite(placed, slice.toString('utf8'), request, dataSet, parts)
   } catch (problem) {
@@ -92,7 +92,8 @@ async function judgeStatement(placed: ReadStatement, slice: Buffer, request: Gat
     // what PostgreSQL itself would complain about, it says better, and with its caret
     const text = slice.toString('utf8')
     if (placed.statement.kind === 'query' && (await parts.describer.complaint(dataSet, text, request.parameterTypes))) return null
-    return refused(problem)
+    const [table] = tables
+    return refused(completed(problem, { example: table === undefined ? exampleFor(dataSet, null) : exampleOf(dataSet, table), person: dataSet.personCalled }))
   }
 }
 

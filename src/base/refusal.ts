@@ -34,9 +34,13 @@ export function withFacts<T>(facts: () => Facts, work: () => T): T {
   try {
     return work()
   } catch (problem) {
-    if (problem instanceof Refusal) throw new Refusal(problem.code, { ...facts(), ...problem.facts }, problem.at)
-    throw problem
+    throw problem instanceof Refusal ? completed(problem, facts()) : problem
   }
+}
+
+/** The same refusal with facts for the places it left open; those it has stay. */
+export function completed(refusal: Refusal, facts: Facts): Refusal {
+  return new Refusal(refusal.code, { ...facts, ...refusal.facts }, refusal.at)
 }
 
 function fill(text: string, facts: Facts): string {
