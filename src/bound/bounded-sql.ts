@@ -128,7 +128,8 @@ function capped(total: Total, i: number, single: boolean): readonly Target[] {
     case 'sum':
       return [target(single ? s : scaled(s, n, total.rows), sumName(i))]
     case 'twin': {
-      const above = operator(s, '-', operator(n, '*', integer(total.units.low)))
+      // in numeric: a person's rows are not yet capped here
+      const above = operator(cast(s, 'numeric'), '-', operator(cast(n, 'numeric'), '*', numeric(total.units.low.toString())))
       return [target(single ? n : extreme('least', n, integer(total.rows)), countName(i)), target(single ? above : scaled(above, n, total.rows), sumName(i))]
     }
   }

@@ -64,6 +64,8 @@ export async function testHedgerow(options: TestHedgerowOptions): Promise<TestHe
     open.push(client)
     return client
   }
+  const maintenance = await connect({ connectionString: backend.url })
+  for (const name of ['people_vault', 'hedgerow_ledger', dataSet]) await maintenance.query(`DROP DATABASE IF EXISTS ${pg.escapeIdentifier(name)} WITH (FORCE)`)
   const vaultUrl = await ensureDatabase(backend.url, 'people_vault')
   const vault = await connect({ connectionString: vaultUrl })
   await vault.query(options.vault)
