@@ -30,7 +30,7 @@ export interface AskVault {
 
 /** Places for statements in the vault; one is held until its reply leaves, so that not even waiting for one tells how long another took. */
 export interface Slots {
-  take(signal: AbortSignal): Promise<() => void>
+  take(owner: string, signal: AbortSignal): Promise<() => void>
 }
 
 export interface GiveParts {
@@ -58,7 +58,7 @@ export interface Given {
 export async function give(block: PlannedBlock, prepared: Prepared, price: Price, accounts: Accounts, settings: SessionSettings, request: PullRequest, parts: GiveParts, signal: AbortSignal): Promise<Given> {
   const { plan } = block
   const query = await boundedQuery(plan, prepared, parts)
-  const giveBack = await parts.slots.take(signal)
+  const giveBack = await parts.slots.take(accounts.analyst.id, signal)
   try {
     if (parts.overruns.isPaused(accounts.analyst.id, parts.clock.now())) refuse('account.overruns')
     const outcome = await debit(plan, prepared, price, accounts, request, parts)

@@ -68,6 +68,7 @@ export class PoliciesUnfit extends Error {
 }
 
 const vaultPlaces = 8
+const vaultPlacesEach = 4
 const overrunsAnHour = 20
 const drainMs = 10_000
 
@@ -104,7 +105,7 @@ export async function startHedgerow(options: HedgerowOptions): Promise<Hedgerow>
       clock,
       random,
       log,
-      slots: createSlots(vaultPlaces),
+      slots: createSlots(vaultPlaces, vaultPlacesEach),
       statements: createStatementLog(),
       lastAnswers: createLastAnswers(),
       overruns: createOverruns(options.overrunsAnHour ?? overrunsAnHour, log),
