@@ -42,7 +42,7 @@ function plan(query: Query, outer: Context, limits: Limits): ReleasePlan {
   const made = totalsOf(aggregates, owned, spread, limits.rows, context.scans)
   const { groups, totals } = groupsOf(keys, listsOf(keys, from.source, where, context.scans), made.totals)
   refuseOpaqueCaps(spread, context)
-  const natural = keys.length === 0 || isOneGroupByNature(keys, spread.determined)
+  const natural = keys.length === 0 || isOneGroupByNature(keys, spread, owned.source)
   return {
     dataSet: context.dataSet,
     scans: [...context.scans],

@@ -5,7 +5,8 @@ import { isNumber, scalarType } from '../catalog/scalar-type.ts'
 import { settle } from '../catalog/functions/comparisons.ts'
 import { columnOf, domainOf } from './key-domain.ts'
 import type { Key, ListFactor } from './release-plan.ts'
-import { indexesIn, isPrivate, type Scan, type Source } from './relation.ts'
+import type { FanOut } from './fan-out.ts'
+import { indexesIn, isPrivate, paddedScans, type Scan, type Source } from './relation.ts'
 
 /** A key as it is grouped by. Refused: what names a person, and types whose equal values print apart. */
 export function keyOf(scalar: Scalar, scans: readonly Scan[]): Key {
@@ -89,7 +90,12 @@ export function listsOf(keys: readonly Key[], source: Source, tests: readonly Sc
   return factors
 }
 
-/** Whether every key is a function of what a person has only once, so that each person is in one group by nature. */
-export function isOneGroupByNature(keys: readonly Key[], determined: ReadonlySet<number>): boolean {
-  return keys.every(key => [...scansOf(key.scalar)].every(scan => determined.has(scan)))
+/**
+ * Whether every key is a function of what a person has only once, so that each person is in one group by nature. Where a person has several rows, a scan of
+ * the padded side of a LEFT JOIN is NULL on some of them and a row on others: that is two groups.
+ */
+export function isOneGroupByNature(keys: readonly Key[], spread: FanOut, source: Source): boolean {
+  if (spread.single) return true
+  const padded = paddedScans(source)
+  return keys.every(key => [...scansOf(key.scalar)].every(scan => spread.determined.has(scan) && !padded.has(scan)))
 }

@@ -108,7 +108,7 @@ function learnFrom(source: Source, builder: Builder): void {
     case 'join': {
       learnFrom(source.left, builder)
       learnFrom(source.right, builder)
-      const padding = source.type === 'left' && !hasPerson(source.left)
+      const padding = source.type === 'left' && !hasPerson(source.left) && hasPerson(source.right)
       if (source.type === 'inner' || padding) return learn(source.on, builder.classes)
       const inside = indexesIn(source.right)
       for (const test of source.on) {
