@@ -32,7 +32,7 @@ export function refuseClosed(placed: Placed, tables: readonly PrivateTable[], me
   if (placed.statement.kind !== 'other') return
   const { tag } = placed.statement
   const [table] = tables
-  if (tag === 'CreateStmt' && table !== undefined) refuse('rows.shadow', { table: table.name })
+  if (tag === 'CreateStmt' && table !== undefined) refuse('rows.shadow', { table: table.name, example: exampleOf(dataSet, table) })
   const what = closed[tag]
   if (what === undefined) return
   const body = tag === 'CreateFunctionStmt' || tag === 'DoStmt'

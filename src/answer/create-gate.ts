@@ -1,5 +1,5 @@
 import { completed, Refusal, refuse } from '../base/refusal.ts'
-import { cutStatement } from '../plan/cut.ts'
+import { type CutBlock, cutStatement } from '../plan/cut.ts'
 import { noLimits } from '../plan/limits.ts'
 import { planBlock } from '../plan/block.ts'
 import { blockText, type BlockTypes, explainText, refusedText, rewritten } from '../plan/rewrite.ts'
@@ -24,6 +24,8 @@ type Mention = (text: Uint8Array) => boolean
 
 /** Any instant: before a statement runs, now() is unknown and decides nothing. */
 const someInstant = '2000-01-01T00:00:00+00:00'
+
+const analysed: ReadonlySet<string> = new Set(['query', 'select-into', 'create-table-as', 'insert'])
 
 /** What the wire asks of each text that may name a private table. */
 export function createGate(parts: GateParts): Gate {
@@ -104,13 +106,23 @@ async function rewrite(placed: ReadStatement, text: string, request: GateRequest
   for (const block of cut.blocks) {
     const oids = block.parameters.map(number => request.parameterTypes[number - 1] ?? 0)
     const description = await parts.describer.block(dataSet, blockText(block, { parameters: [], columns: [] }), oids)
-    if (description.kind === 'complaint') return null
+    if (description.kind === 'complaint') {
+      // other commands are analysed when they run: PostgreSQL says then what is wrong
+      if (!analysed.has(statement.kind) || (await parts.describer.complaint(dataSet, text, request.parameterTypes))) return null
+      return refuseCorrelated(block, description.message, dataSet)
+    }
     const parameters = description.parameters.map(type => ({ type, value: undefined }))
     planBlock(block.query, { dataSet, parameters, now: someInstant, timeZone: 'UTC', commonTables: new Map(), scans: [] }, noLimits)
     types.push(description.types)
   }
   if (statement.kind === 'explain' && cut.blocks.length > 0) return explainText(text)
   return rewritten(cut, types)
+}
+
+/** A block that PostgreSQL understands within its statement only: it reads columns of the query around it. */
+function refuseCorrelated(block: CutBlock, complaint: string, dataSet: DataSet): never {
+  const column = /"([^"]+)"|column (\S+)/.exec(complaint)
+  return refuse('block.correlated', { column: column?.[1] ?? column?.[2] ?? 'a column', example: exampleFor(dataSet, block.query) })
 }
 
 /** A byte offset as the character, from 1, that PostgreSQL's position field counts; 0 for no place. */

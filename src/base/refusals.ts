@@ -32,7 +32,7 @@ export const refusals = {
   'text.unreadable': {
     sqlstate: '42601',
     message: 'this form of {what} cannot be read over private tables',
-    hint: 'Leave it out, or apply it to the finished result: SELECT … FROM (<the aggregate query>) AS answer.',
+    hint: 'Leave it out, or apply it to the finished result: SELECT answer.* FROM ({example}) AS answer',
     why: 'what is not understood in full is not answered',
   },
   'rows.private': {
@@ -62,7 +62,7 @@ export const refusals = {
   'rows.shadow': {
     sqlstate: '42501',
     message: 'the name "{table}" belongs to a private table',
-    hint: 'Choose another name, for example: CREATE TEMP TABLE my_{table} AS …',
+    hint: 'Choose another name, for example CREATE TEMP TABLE answer AS {example}',
     why: 'one name with two meanings would be charged for by mistake',
   },
   'block.ungrouped': {
@@ -92,7 +92,7 @@ export const refusals = {
   'block.mixed': {
     sqlstate: '42501',
     message: 'private rows cannot be joined with {what} inside an aggregate',
-    hint: 'Aggregate the private rows first and join the finished result: SELECT … FROM ({example}) AS answer JOIN …',
+    hint: 'Aggregate the private rows first and join the finished result: SELECT answer.*, other.n FROM ({example}) AS answer CROSS JOIN (VALUES (1)) AS other(n)',
     why: 'only rows of the policy’s tables have a proved owner and size',
   },
   'join.person': {
@@ -122,7 +122,7 @@ export const refusals = {
   'expr.function': {
     sqlstate: '42501',
     message: 'function {what} is not in the list of functions that may run on private rows',
-    hint: 'Apply it to the finished result: SELECT {what}(answer.value) FROM ({example}) AS answer(value), or write the condition with comparisons, CASE, date_trunc or extract',
+    hint: 'Write the condition with comparisons, CASE, date_trunc or extract, or apply the function to the finished result: {example}',
     why: 'a function must be proved unable to raise on any row',
   },
   'expr.unsupported': {

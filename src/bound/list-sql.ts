@@ -7,7 +7,14 @@ import type { Expr, FromItem, Query, Target } from '../sql/tree.ts'
 import { type FixedValues, printKey, printOwn, printScalar } from './print-scalar.ts'
 import { allOf, joined, printSource, selectQuery, subquery, target } from './print-source.ts'
 
-const units: Readonly<Record<string, string>> = { quarter: '3 months', decade: '10 years', century: '100 years', millennium: '1000 years', microseconds: '1 microsecond', milliseconds: '1 millisecond' }
+const units: Readonly<Record<string, string>> = {
+  quarter: '3 months',
+  decade: '10 years',
+  century: '100 years',
+  millennium: '1000 years',
+  microseconds: '1 microsecond',
+  milliseconds: '1 millisecond',
+}
 
 /**
  * The query that lists every group, over published data and fixed values only: it runs in the lobby, before anything is debited. One text column a key,
@@ -16,9 +23,15 @@ const units: Readonly<Record<string, string>> = { quarter: '3 months', decade: '
 export function listSql(plan: ReleasePlan, fixed: FixedValues): Query {
   const factors = plan.groups.kind === 'listed' ? plan.groups.factors : []
   const items = factors.map((factor, i) => subquery(factorSql(plan, factor, fixed), `f${i.toString()}`))
-  const from = items.reduce<FromItem | null>((left, right) => (left === null ? right : joined('inner', left, right, { kind: 'constant', constant: { kind: 'boolean', value: true }, at: -1 })), null)
-  const place = (key: number): string => `f${factors.findIndex(factor => keysOf(factor).includes(key)).toString()}`
-  return selectQuery({ targets: plan.keys.map((_, key) => target(cast(column(place(key), `k${key.toString()}`), 'text'), `k${key.toString()}`)), from: from === null ? [] : [from] })
+  const from = items.reduce<FromItem | null>(
+    (left, right) => (left === null ? right : joined('inner', left, right, { kind: 'constant', constant: { kind: 'boolean', value: true }, at: -1 })),
+    null,
+  )
+  const place = (key: number): string => `f${factors.findIndex((factor) => keysOf(factor).includes(key)).toString()}`
+  return selectQuery({
+    targets: plan.keys.map((_, key) => target(cast(column(place(key), `k${key.toString()}`), 'text'), `k${key.toString()}`)),
+    from: from === null ? [] : [from],
+  })
 }
 
 function keysOf(factor: ListFactor): readonly number[] {
@@ -30,7 +43,7 @@ function factorSql(plan: ReleasePlan, factor: ListFactor, fixed: FixedValues): Q
   switch (factor.kind) {
     case 'texts': {
       const value = (entry: string | null): Expr => printKey(literal(factor.type, entry), fixed)
-      const rows = factor.texts.map(entry => [cast(value(entry), factor.type.family === 'unknown' ? 'text' : factor.type.name, factor.type.schema)])
+      const rows = factor.texts.map((entry) => [cast(value(entry), factor.type.family === 'unknown' ? 'text' : factor.type.name, factor.type.schema)])
       const values: Query = { kind: 'query', with: null, body: { kind: 'values', rows }, order: [], limit: null, offset: null, withTies: false }
       return distinct([target(column('v', name), name)], subquery(values, 'v', [name]), [])
     }
@@ -46,15 +59,23 @@ function factorSql(plan: ReleasePlan, factor: ListFactor, fixed: FixedValues): Q
       return withNull(distinct([target(value, name)], series(args), []), factor.nullable, [name])
     }
     case 'numbers': {
-      const args = [factor.low, factor.high].map(end => cast(printScalar(end, fixed), 'int8'))
+      const args = [factor.low, factor.high].map((end) => cast(printScalar(end, fixed), 'int8'))
       const own = cast(column('v', 'v'), factor.type.name, factor.type.schema)
       return withNull(distinct([target(factor.type.family === 'numeric' ? call('trim_scale', [own]) : own, name)], series(args), []), factor.nullable, [name])
     }
     case 'component': {
-      const names = factor.keys.map(key => `k${key.toString()}`)
+      const names = factor.keys.map((key) => `k${key.toString()}`)
       const printed = printSource(factor.source, { fixed, read: new Map(), capped: new Map(), counted: [], everywhere: [], padded: new Set() })
       const targets = factor.keys.map((key, i) => target(printKey(keyScalar(plan, key), fixed), names[i] ?? ''))
-      return withNull(distinct(targets, printed.from, [...printed.tests, ...factor.tests].map(test => printScalar(test, fixed))), factor.padded, names)
+      return withNull(
+        distinct(
+          targets,
+          printed.from,
+          [...printed.tests, ...factor.tests].map((test) => printScalar(test, fixed)),
+        ),
+        factor.padded,
+        names,
+      )
     }
     default:
       return unreachable(factor)
@@ -72,7 +93,16 @@ function literal(type: Scalar['type'], entry: string | null): Scalar {
 }
 
 function series(args: readonly Expr[]): FromItem {
-  return { kind: 'function', functions: [{ call: call('generate_series', args), definitions: [] }], rowsFrom: false, lateral: false, ordinality: false, alias: { name: 'v', columns: ['v'] }, definitions: [], at: -1 }
+  return {
+    kind: 'function',
+    functions: [{ call: call('generate_series', args), definitions: [] }],
+    rowsFrom: false,
+    lateral: false,
+    ordinality: false,
+    alias: { name: 'v', columns: ['v'] },
+    definitions: [],
+    at: -1,
+  }
 }
 
 function distinct(targets: readonly Target[], from: FromItem, tests: readonly Expr[]): Query {
@@ -82,13 +112,22 @@ function distinct(targets: readonly Target[], from: FromItem, tests: readonly Ex
 /** The list with a row of NULLs, where the keys can be NULL. */
 function withNull(query: Query, nullable: boolean, names: readonly string[]): Query {
   if (!nullable) return query
-  const nulls: Query = { kind: 'query', with: null, body: { kind: 'values', rows: [names.map(() => nothing())] }, order: [], limit: null, offset: null, withTies: false }
-  return { kind: 'query', with: null, body: { kind: 'set-operation', word: 'union', all: false, left: query, right: nulls }, order: [], limit: null, offset: null, withTies: false }
+  // in VALUES a bare NULL would be text
+  const nulls = selectQuery({ targets: names.map((name) => target(nothing(), name)), from: [] })
+  return {
+    kind: 'query',
+    with: null,
+    body: { kind: 'set-operation', word: 'union', all: false, left: query, right: nulls },
+    order: [],
+    limit: null,
+    offset: null,
+    withTies: false,
+  }
 }
 
 /** How many rows a published side has that is not joined on a unique key; the lobby counts before anything is debited. */
 export function countSql(plan: ReleasePlan, scan: number, ceiling: bigint, fixed: FixedValues): Query {
-  const found = plan.scans.find(each => each.index === scan)
+  const found = plan.scans.find((each) => each.index === scan)
   if (found === undefined) throw new RangeError('a count speaks of a scan the plan lacks')
   const source: Source = { kind: 'scan', scan: found }
   const printed = printSource(source, { fixed, read: new Map(), capped: new Map(), counted: [], everywhere: [], padded: new Set() })

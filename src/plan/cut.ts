@@ -70,7 +70,7 @@ function isPrivateName(name: readonly string[], dataSet: DataSet): boolean {
 }
 
 function notShadowing<T extends { readonly name: readonly string[] }>(into: T, dataSet: DataSet): T {
-  if (isPrivateName(into.name.slice(-1), dataSet)) refuse('rows.shadow', { table: into.name.at(-1) ?? '' })
+  if (isPrivateName(into.name.slice(-1), dataSet)) refuse('rows.shadow', { table: into.name.at(-1) ?? '', example: exampleFor(dataSet, null) })
   return into
 }
 

@@ -2,8 +2,8 @@ import { refuse } from '../base/refusal.ts'
 import type { CatalogType } from '../catalog/catalog.ts'
 import { castTo } from '../catalog/functions/casts.ts'
 import { settle } from '../catalog/functions/comparisons.ts'
-import { isFixed, type Scalar } from '../catalog/scalar.ts'
-import { promote, isNumber, scalarType, type ScalarType } from '../catalog/scalar-type.ts'
+import { type Clamp, isFixed, type Scalar } from '../catalog/scalar.ts'
+import { promote, isNumber, scalarType, scalarTypeOf, type ScalarType } from '../catalog/scalar-type.ts'
 import type { DataColumn } from '../policy/data-set.ts'
 import type { FromItem, Values } from '../sql/tree.ts'
 import type { Context } from './context.ts'
@@ -20,12 +20,12 @@ function columnOf(name: string, type: ScalarType, notNull: boolean): DataColumn 
   return { name, type: catalogType, notNull, deterministic: true, role: 'listed', clamp: null, step: null, values: null, valuesFrom: null }
 }
 
-function scanOf(table: ListedRows, context: Context, at: number): { readonly scan: Scan; readonly columns: readonly VisibleColumn[] } {
+function scanOf(table: ListedRows, context: Context, at: number, offers: Clamp | null): { readonly scan: Scan; readonly columns: readonly VisibleColumn[] } {
   const scan: Scan = { index: context.scans.length, table, at }
   context.scans.push(scan)
   const columns = [...table.columns.values()].map((column): VisibleColumn => {
-    const type = scalarType(column.type.name)
-    return { name: column.name, scalar: { type, node: { kind: 'column', scan: scan.index, column: column.name, clamped: null, offers: null }, nullable: !column.notNull, range: null, carrier: 'own', at } }
+    const type = scalarTypeOf(column.type) ?? refuse('expr.unsupported', { what: `a list of ${column.type.name}` }, at)
+    return { name: column.name, scalar: { type, node: { kind: 'column', scan: scan.index, column: column.name, clamped: null, offers }, nullable: !column.notNull, range: null, carrier: 'own', at } }
   })
   return { scan, columns }
 }
@@ -42,7 +42,7 @@ export function lowerValues(values: Values, context: Context, at: number): Rows 
   const settled = rows.map(row => row.map((value, i) => settle(value, types[i] ?? value.type)))
   const columns = types.map((type, i) => columnOf(`column${String(i + 1)}`, type, settled.every(row => row[i]?.nullable === false)))
   const table: ListedRows = { kind: 'listed', name: 'VALUES', source: { kind: 'values', rows: settled }, columns: new Map(columns.map(column => [column.name, column])) }
-  const made = scanOf(table, context, at)
+  const made = scanOf(table, context, at, null)
   return { source: { kind: 'scan', scan: made.scan }, columns: made.columns }
 }
 
@@ -65,8 +65,17 @@ export function lowerListed(item: Extract<FromItem, { kind: 'function' }>, conte
   const args = written.map((arg, i) => castTo(arg, i === 2 ? step : type, arg.at))
   const name = item.alias?.columns[0] ?? item.alias?.name ?? 'generate_series'
   const table: ListedRows = { kind: 'listed', name: 'generate_series', source: { kind: 'series', args }, columns: new Map([[name, columnOf(name, type, true)]]) }
-  const made = scanOf(table, context, item.at)
+  const made = scanOf(table, context, item.at, endsOf(written))
   return { source: { kind: 'scan', scan: made.scan }, scope: { items: [{ name: item.alias?.name ?? 'generate_series', schema: '', columns: made.columns }], star: made.columns } }
+}
+
+/** What a rising series stays within, where its ends are plain constants: it bounds what is computed from it, as a clamp would. */
+function endsOf(args: readonly Scalar[]): Clamp | null {
+  const [low, high, step] = args.map(arg => (arg.node.kind === 'constant' ? arg.node.text : null))
+  if (low == null || high == null) return null
+  if (args[0]?.type.family === 'integer' && ![low, high].every(end => /^-?\d+$/.test(end))) return null
+  const rises = args.length < 3 || (step != null && /^[\d :.a-z]+$/i.test(step) && !/ago/i.test(step))
+  return rises ? { low, high, step: null } : null
 }
 
 function seriesType(args: readonly Scalar[], at: number): ScalarType {
