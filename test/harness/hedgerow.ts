@@ -11,8 +11,8 @@ import { systemClock, systemRandom } from '../../src/serve/system.ts'
 import { testBackend } from './backend.ts'
 
 export interface TestHedgerowOptions {
-  /** SQL that fills the vault's database. */
-  readonly vault: string
+  /** SQL that fills the vault's database, or what fills it by its superuser's URL. */
+  readonly vault: string | ((url: string) => Promise<void>)
   /** The policy file of the one data set. */
   readonly policy: string
   /** Caps by analyst, as YAML flow text: { epsilon: 4, delta: 1e-6, renews: never }; every analyst's password is `<name>'s password`. */
@@ -68,7 +68,8 @@ export async function testHedgerow(options: TestHedgerowOptions): Promise<TestHe
   for (const name of ['people_vault', 'hedgerow_ledger', dataSet]) await maintenance.query(`DROP DATABASE IF EXISTS ${pg.escapeIdentifier(name)} WITH (FORCE)`)
   const vaultUrl = await ensureDatabase(backend.url, 'people_vault')
   const vault = await connect({ connectionString: vaultUrl })
-  await vault.query(options.vault)
+  if (typeof options.vault === 'string') await vault.query(options.vault)
+  else await options.vault(vaultUrl)
   const ledgerUrl = await ensureDatabase(backend.url, 'hedgerow_ledger')
   await writeFile(join(directory, `${dataSet}.yaml`), options.policy)
   await writeFile(join(directory, 'analysts.yaml'), await analystsText(options, dataSet))
