@@ -24,7 +24,7 @@ export function figure(value: Fraction): string {
 
 /** A margin in the places of its step, rounded up. */
 export function marginText(value: Fraction, total: Total): string {
-  const places = total.kind === 'sum' || total.kind === 'twin' ? Math.max(placesOf(total.units.step), 2) : 0
+  const places = total.kind === 'sum' || total.kind === 'twin' || total.kind === 'triple' ? Math.max(placesOf(total.units.step), 2) : 0
   const text = value.toDecimal(places, 'up')
   return text.includes('.') ? text.replace(/\.?0+$/, '') : text
 }
@@ -43,7 +43,7 @@ export function rowsOf(total: Total): string | null {
 export function expectedMargin(output: Output, plan: ReleasePlan, price: Price, confidence: Fraction): string | null {
   const total = plan.totals[output.total]
   const mechanism = price.mechanisms[output.total]
-  if (total === undefined || mechanism === undefined || total.kind === 'twin') return null
+  if (total === undefined || mechanism === undefined || total.kind === 'twin' || total.kind === 'triple') return null
   const units = margin(mechanism, confidence)
   return total.kind === 'sum' ? marginText(Fraction.make(units).mul(total.units.step), total) : units.toString()
 }
@@ -61,7 +61,7 @@ export function ledgerNote(plan: ReleasePlan, price: Price, groups: bigint): Rea
         of: total.kind,
         sensitivity: reachOf(total).toString(),
         rows: rowsOf(total),
-        step: total.kind === 'sum' || total.kind === 'twin' ? total.units.step.toString() : '1',
+        step: total.kind === 'sum' || total.kind === 'twin' || total.kind === 'triple' ? total.units.step.toString() : '1',
         mechanism: mechanism?.kind ?? null,
         scale: mechanism === undefined ? null : scaleText(mechanism),
         variance: mechanism === undefined ? null : figure(varianceOf(mechanism)),

@@ -2,6 +2,7 @@ import { check } from '../base/check.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import { printQuery } from '../sql/print.ts'
 import type { Query } from '../sql/tree.ts'
+import { coordinatesOf } from './reach.ts'
 import { boundedSql, type Draw } from './bounded-sql.ts'
 import type { FixedValues } from './print-scalar.ts'
 
@@ -24,7 +25,7 @@ export class BoundedQuery {
   static of(plan: ReleasePlan, fixed: FixedValues, draw: Draw): BoundedQuery {
     check(draw.keep !== null || plan.oneGroupByNature || plan.groups.kind === 'listed', 'groups are left unbounded only where there is nothing to choose')
     const tree = boundedSql(plan, fixed, draw)
-    const columns = plan.totals.reduce((sum, total) => sum + (total.kind === 'twin' ? 2 : 1), 0)
+    const columns = plan.totals.reduce((sum, total) => sum + coordinatesOf(total), 0)
     return new BoundedQuery(printQuery(tree), tree, plan.keys.length, columns)
   }
   get text(): string {

@@ -1,7 +1,7 @@
-import { call, cast, column, extreme, integer, isNull, logic, numeric, operator, when } from '../catalog/build.ts'
+import { call, cast, column, extreme, integer, isNull, logic, numeric, operator, when, text } from '../catalog/build.ts'
 import { scansOf } from '../catalog/scalar.ts'
 import { paddedScans } from '../plan/relation.ts'
-import type { ReleasePlan, Total } from '../plan/release-plan.ts'
+import type { ReleasePlan, Total, Units } from '../plan/release-plan.ts'
 import type { Expr, FromItem, GroupItem, Query, Target } from '../sql/tree.ts'
 import { pickOrder } from './pick-order.ts'
 import { type FixedValues, printKey, printScalar, scanName } from './print-scalar.ts'
@@ -14,6 +14,7 @@ function positions(count: number): readonly GroupItem[] {
 const keyName = (i: number): string => `k${i.toString()}`
 const countName = (i: number): string => `n${i.toString()}`
 const sumName = (i: number): string => `t${i.toString()}`
+const squareName = (i: number): string => `u${i.toString()}`
 
 /** How the bound is drawn: the number of groups a person may keep (null: nothing to choose), and the fresh secret salts of the choice. */
 export interface Draw {
@@ -49,34 +50,49 @@ function relation(plan: ReleasePlan, fixed: FixedValues): Relation {
   // before the join a test may run only where no padding can arise: WHERE x IS NULL means the unmatched rows, not the NULLs among the joined ones
   const padded = paddedScans(plan.owned.source)
   const everywhere = plan.owned.source.kind === 'filter' ? plan.owned.source.tests.filter(test => [...scansOf(test)].every(scan => !padded.has(scan))) : []
-  const printed = printSource(plan.owned.source, { fixed, read: readColumns(plan), capped: plan.fanOut.capped, counted: plan.fanOut.counted, everywhere, padded: paddedIn(plan.owned.source) })
+  const printed = printSource(plan.owned.source, {
+    fixed,
+    read: readColumns(plan),
+    capped: plan.fanOut.capped,
+    counted: plan.fanOut.counted,
+    everywhere,
+    padded: paddedIn(plan.owned.source),
+  })
   const person = column(scanName(plan.owned.person.scan), plan.owned.person.column)
-  const tests = [...printed.tests.map(test => printScalar(test, fixed)), ...listedOnly(plan, fixed), isNull(person, true)]
-  return { from: printed.from, where: allOf(tests) ?? isNull(person, true), person, keys: plan.keys.map((key, i) => target(printKey(key.scalar, fixed), keyName(i))) }
+  const tests = [...printed.tests.map((test) => printScalar(test, fixed)), ...listedOnly(plan, fixed), isNull(person, true)]
+  return {
+    from: printed.from,
+    where: allOf(tests) ?? isNull(person, true),
+    person,
+    keys: plan.keys.map((key, i) => target(printKey(key.scalar, fixed), keyName(i))),
+  }
 }
 
 /** Rows of values outside a declared list reach no group: they must not use up a person's groups either. */
 function listedOnly(plan: ReleasePlan, fixed: FixedValues): readonly Expr[] {
   if (plan.groups.kind !== 'listed') return []
-  return plan.groups.factors.flatMap(factor => {
+  return plan.groups.factors.flatMap((factor) => {
     const key = factor.kind === 'texts' ? plan.keys[factor.key] : undefined
     if (factor.kind !== 'texts' || key?.scalar.node.kind !== 'column' || key.type.family === 'bool') return []
     const value = printScalar(key.scalar, fixed)
-    const list = factor.texts.filter(text => text !== null).map(text => printScalar({ ...key.scalar, node: { kind: 'constant', text } }, fixed))
+    const list = factor.texts.filter((text) => text !== null).map((text) => printScalar({ ...key.scalar, node: { kind: 'constant', text } }, fixed))
     const listed: Expr = { kind: 'in-list', arg: value, list, negated: false, at: -1 }
     return [factor.texts.includes(null) ? logic('or', [listed, isNull(value)]) : listed]
   })
 }
 
 /** A value on its grid, as an integer expression. */
-function unitsExpr(total: Extract<Total, { kind: 'sum' | 'twin' }>, fixed: FixedValues): Expr {
+function unitsExpr(total: Extract<Total, { kind: 'sum' | 'twin' | 'triple' }>, fixed: FixedValues): Expr {
   const { value, step } = total.units
   const printed = printScalar(value, fixed)
   const whole = value.type.family === 'integer' && value.carrier !== 'numeric' && step.n === 1n && step.d === 1n
   if (whole) return value.carrier === 'own' && value.type.name !== 'int8' ? printed : cast(printed, 'int8')
   const exact = value.carrier === 'numeric' || value.type.family === 'numeric' ? printed : cast(printed, 'numeric')
   // multiplied rather than divided where that is exact: division rounds
-  const scaled = step.n === 1n ? operator(exact, '*', numeric(step.d.toString())) : operator(operator(exact, '*', numeric(step.d.toString())), '/', numeric(step.n.toString()))
+  const scaled =
+    step.n === 1n
+      ? operator(exact, '*', numeric(step.d.toString()))
+      : operator(operator(exact, '*', numeric(step.d.toString())), '/', numeric(step.n.toString()))
   return cast(call('round', [scaled]), 'int8')
 }
 
@@ -85,7 +101,7 @@ function sameRow(total: Total, fixed: FixedValues): { readonly test: Expr | null
   if (total.kind === 'persons') return { test: filter, units: null }
   if (total.kind === 'rows') {
     const present = total.of === null ? null : isNull(printScalar(total.of, fixed), true)
-    return { test: allOf([filter, present].filter(each => each !== null)), units: null }
+    return { test: allOf([filter, present].filter((each) => each !== null)), units: null }
   }
   return { test: filter, units: unitsExpr(total, fixed) }
 }
@@ -96,8 +112,14 @@ function singleRows(plan: ReleasePlan, fixed: FixedValues): Query {
   const columns = plan.totals.flatMap((total, i): readonly Target[] => {
     const { test, units } = sameRow(total, fixed)
     if (units === null) return test === null ? [target(integer(1n), countName(i))] : [target(when(test, integer(1n), integer(0n)), countName(i))]
-    const present = allOf([test, isNull(units, true)].filter(each => each !== null)) ?? test
-    return present === null ? [] : [target(when(present, integer(1n), integer(0n)), countName(i)), target(test === null ? units : when(test, units, null), sumName(i))]
+    const present = allOf([test, isNull(units, true)].filter((each) => each !== null)) ?? test
+    return present === null
+      ? []
+      : [
+          target(when(present, integer(1n), integer(0n)), countName(i)),
+          target(test === null ? units : when(test, units, null), sumName(i)),
+          ...squares(total, i, (value) => (test === null ? value : when(test, value, null)), units),
+        ]
   })
   return selectQuery({ targets: [target(rows.person, 'p'), ...rows.keys, ...columns], from: [rows.from], where: rows.where })
 }
@@ -108,9 +130,25 @@ function partialSums(plan: ReleasePlan, fixed: FixedValues): Query {
   const columns = plan.totals.flatMap((total, i): readonly Target[] => {
     const { test, units } = sameRow(total, fixed)
     if (units === null) return total.kind === 'persons' && total.filter === null ? [] : [target(call('count', [], { star: true, filter: test }), countName(i))]
-    return [target(call('count', [units], { filter: test }), countName(i)), target(call('sum', [units], { filter: test }), sumName(i))]
+    return [
+      target(call('count', [units], { filter: test }), countName(i)),
+      target(call('sum', [units], { filter: test }), sumName(i)),
+      ...squares(total, i, (value) => call('sum', [value], { filter: test }), units),
+    ]
   })
-  return selectQuery({ targets: [target(rows.person, 'p'), ...rows.keys, ...columns], from: [rows.from], where: rows.where, group: positions(plan.keys.length + 1) })
+  return selectQuery({
+    targets: [target(rows.person, 'p'), ...rows.keys, ...columns],
+    from: [rows.from],
+    where: rows.where,
+    group: positions(plan.keys.length + 1),
+  })
+}
+
+/** For a triple, the squares above the clamp's low end as well: width² fits 62 bits, as the plan proves. */
+function squares(total: Total, i: number, shape: (value: Expr) => Expr, units: Expr): readonly Target[] {
+  if (total.kind !== 'triple') return []
+  const above = operator(cast(units, 'int8'), '-', cast(text(total.units.low.toString()), 'int8'))
+  return [target(shape(operator(above, '*', above)), squareName(i))]
 }
 
 /** Each person's part of each total, capped; and, where groups have to be chosen, the group's place in the salted order. */
@@ -136,7 +174,23 @@ function capped(total: Total, i: number, single: boolean): readonly Target[] {
       const above = operator(cast(s, 'numeric'), '-', operator(cast(n, 'numeric'), '*', numeric(total.units.low.toString())))
       return [target(single ? n : extreme('least', n, integer(total.rows)), countName(i)), target(single ? above : scaled(above, n, total.rows), sumName(i))]
     }
+    case 'triple': {
+      const [first, second] = triple(column('p1', squareName(i)), n, s, total.units)
+      const part = (value: Expr): Expr => (single ? value : scaled(value, n, total.rows))
+      return [target(single ? n : extreme('least', n, integer(total.rows)), countName(i)), target(part(first), sumName(i)), target(part(second), squareName(i))]
+    }
   }
+}
+
+/** The sums of (high - value)² and of 2 (value - low)(high - value) of a person's rows; the third is what width² a row leaves over. */
+function triple(squared: Expr, n: Expr, sum: Expr, units: Units): readonly [Expr, Expr] {
+  const width = numeric((units.high - units.low).toString())
+  const count = cast(n, 'numeric')
+  const above = operator(cast(sum, 'numeric'), '-', operator(count, '*', numeric(units.low.toString())))
+  const square = cast(orZero(squared), 'numeric')
+  const twice = operator(operator(numeric('2'), '*', width), '*', above)
+  const first = operator(operator(operator(operator(count, '*', width), '*', width), '-', twice), '+', square)
+  return [first, operator(twice, '-', operator(numeric('2'), '*', square))]
 }
 
 function orZero(value: Expr): Expr {
@@ -150,7 +204,15 @@ function scaled(sum: Expr, count: Expr, rows: bigint): Expr {
 }
 
 function pickRank(plan: ReleasePlan, draw: Draw): Expr {
-  return call('row_number', [], { over: { name: '', refers: '', partition: [column('p1', 'p')], order: pickOrder(plan, draw.salts, i => column('p1', keyName(i)), column('p1', 'p')), frame: plainFrame } })
+  return call('row_number', [], {
+    over: {
+      name: '',
+      refers: '',
+      partition: [column('p1', 'p')],
+      order: pickOrder(plan, draw.salts, (i) => column('p1', keyName(i)), column('p1', 'p')),
+      frame: plainFrame,
+    },
+  })
 }
 
 function addUp(total: Total, i: number): readonly Target[] {
@@ -166,6 +228,12 @@ function addUp(total: Total, i: number): readonly Target[] {
     case 'twin': {
       const width = total.units.high - total.units.low
       return [target(sum(s), sumName(i)), target(sum(operator(operator(cast(n, 'numeric'), '*', numeric(width.toString())), '-', s)), countName(i))]
+    }
+    case 'triple': {
+      const width = total.units.high - total.units.low
+      const u = column('q', squareName(i))
+      const whole = operator(cast(n, 'numeric'), '*', numeric((width * width).toString()))
+      return [target(sum(s), sumName(i)), target(sum(u), squareName(i)), target(sum(operator(operator(whole, '-', s), '-', u)), countName(i))]
     }
   }
 }

@@ -33,7 +33,7 @@ export function* scalarsOf(plan: ReleasePlan): Generator<Scalar> {
   for (const total of plan.totals) {
     if (total.filter !== null) yield total.filter
     if (total.kind === 'rows' && total.of !== null) yield total.of
-    if (total.kind === 'sum' || total.kind === 'twin') yield total.units.value
+    if (total.kind === 'sum' || total.kind === 'twin' || total.kind === 'triple') yield total.units.value
   }
   for (const scan of plan.scans) yield* listedIn(scan)
 }
@@ -64,7 +64,7 @@ export function readColumns(plan: ReleasePlan): ReadColumns {
   }
   add(plan.owned.person.scan, plan.owned.person.column)
   for (const index of plan.fanOut.capped.keys()) {
-    const table = plan.scans.find(scan => scan.index === index)?.table
+    const table = plan.scans.find((scan) => scan.index === index)?.table
     if (table?.kind === 'private' && table.owner.kind === 'column') add(index, table.owner.column)
   }
   for (const scalar of scalarsOf(plan)) for (const part of parts(scalar)) if (part.node.kind === 'column') add(part.node.scan, part.node.column)
@@ -112,7 +112,7 @@ export function printSource(source: Source, context: SourceContext): PrintedSour
       const [left, right] = [printSource(source.left, context), printSource(source.right, context)]
       const outer = source.type === 'left'
       const on = [...source.on, ...(outer ? right.tests : [])]
-      const condition = allOf(on.map(test => printScalar(test, context.fixed))) ?? constant({ kind: 'boolean', value: true })
+      const condition = allOf(on.map((test) => printScalar(test, context.fixed))) ?? constant({ kind: 'boolean', value: true })
       return { from: joined(source.type, left.from, right.from, condition), tests: outer ? left.tests : [...left.tests, ...right.tests] }
     }
   }
@@ -131,7 +131,7 @@ function printScan(scan: Scan, context: SourceContext): FromItem {
   const columns = [...(context.read.get(scan.index) ?? [])].sort()
   if (cap !== undefined) return printCapped(scan, plain, columns, cap, context)
   if (!context.counted.includes(scan.index)) return plain
-  const limited = selectQuery({ targets: columns.map(name => target(column(alias, name), name)), from: [plain] })
+  const limited = selectQuery({ targets: columns.map((name) => target(column(alias, name), name)), from: [plain] })
   return subquery({ ...limited, limit: integer(listedRows) }, alias)
 }
 
@@ -139,7 +139,7 @@ function printScan(scan: Scan, context: SourceContext): FromItem {
 function printCapped(scan: Scan, plain: FromItem, columns: readonly string[], cap: bigint, context: SourceContext): FromItem {
   const alias = scanName(scan.index)
   const owner = scan.table.kind === 'private' && scan.table.owner.kind === 'column' ? scan.table.owner.column : ''
-  const tests = context.everywhere.filter(test => {
+  const tests = context.everywhere.filter((test) => {
     if (context.padded.has(scan.index)) return false
     const scans = scansOf(test)
     return scans.size === 1 && scans.has(scan.index)
@@ -149,16 +149,20 @@ function printCapped(scan: Scan, plain: FromItem, columns: readonly string[], ca
       name: '',
       refers: '',
       partition: [column(alias, owner)],
-      order: columns.map(name => ({ by: column(alias, name), direction: 'default', using: [], nulls: 'default' })),
+      order: columns.map((name) => ({ by: column(alias, name), direction: 'default', using: [], nulls: 'default' })),
       frame: plainFrame,
     },
   })
   const ranked = selectQuery({
-    targets: [...columns.map(name => target(column(alias, name), name)), target(rank, 'place')],
+    targets: [...columns.map((name) => target(column(alias, name), name)), target(rank, 'place')],
     from: [plain],
-    where: allOf(tests.map(test => printScalar(test, context.fixed))),
+    where: allOf(tests.map((test) => printScalar(test, context.fixed))),
   })
-  const kept = selectQuery({ targets: columns.map(name => target(column('ranked', name), name)), from: [subquery(ranked, 'ranked')], where: operator(column('ranked', 'place'), '<=', integer(cap)) })
+  const kept = selectQuery({
+    targets: columns.map((name) => target(column('ranked', name), name)),
+    from: [subquery(ranked, 'ranked')],
+    where: operator(column('ranked', 'place'), '<=', integer(cap)),
+  })
   return subquery(kept, alias)
 }
 
@@ -168,10 +172,19 @@ export const plainFrame = { options: 1058, start: null, end: null } as const
 function printListed(table: Extract<Scan['table'], { kind: 'listed' }>, alias: string, context: SourceContext): FromItem {
   const columns = [...table.columns.keys()]
   if (table.source.kind === 'series') {
-    const args = table.source.args.map(arg => printOwn(arg, context.fixed))
-    return { kind: 'function', functions: [{ call: call('generate_series', args), definitions: [] }], rowsFrom: false, lateral: false, ordinality: false, alias: { name: alias, columns }, definitions: [], at: -1 }
+    const args = table.source.args.map((arg) => printOwn(arg, context.fixed))
+    return {
+      kind: 'function',
+      functions: [{ call: call('generate_series', args), definitions: [] }],
+      rowsFrom: false,
+      lateral: false,
+      ordinality: false,
+      alias: { name: alias, columns },
+      definitions: [],
+      at: -1,
+    }
   }
-  const types = [...table.columns.values()].map(each => each.type)
-  const rows = table.source.rows.map(row => row.map((value, i) => cast(printOwn(value, context.fixed), types[i]?.name ?? 'text', types[i]?.schema)))
+  const types = [...table.columns.values()].map((each) => each.type)
+  const rows = table.source.rows.map((row) => row.map((value, i) => cast(printOwn(value, context.fixed), types[i]?.name ?? 'text', types[i]?.schema)))
   return subquery({ kind: 'query', with: null, body: { kind: 'values', rows }, order: [], limit: null, offset: null, withTies: false }, alias, columns)
 }

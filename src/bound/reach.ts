@@ -18,7 +18,14 @@ export function reachOf(total: Total): bigint {
     }
     case 'twin':
       return total.rows * (total.units.high - total.units.low)
+    case 'triple':
+      return total.rows * (total.units.high - total.units.low) ** 2n
   }
+}
+
+/** How many integers a total is, in one group. */
+export function coordinatesOf(total: Total): 1 | 2 | 3 {
+  return total.kind === 'triple' ? 3 : total.kind === 'twin' ? 2 : 1
 }
 
 /** Groups one person can touch once the number of listed groups is known. */
@@ -28,5 +35,5 @@ export function groupsTouched(plan: ReleasePlan, listed: bigint | null): bigint 
 
 /** The sensitivity of every total, in order. by INVARIANT BOUNDED: `bounded-sql.ts` prints the bound these numbers speak of. */
 export function reachesOf(plan: ReleasePlan, groups: bigint): readonly Reach[] {
-  return plan.totals.map(total => ({ groups, each: reachOf(total), coordinates: total.kind === 'twin' ? 2 : 1 }))
+  return plan.totals.map((total) => ({ groups, each: reachOf(total), coordinates: coordinatesOf(total) }))
 }

@@ -21,12 +21,21 @@ export type Total =
   | { readonly kind: 'sum'; readonly units: Units; readonly filter: Scalar | null; readonly rows: bigint }
   /** Two one-sided sums, of value - low and of high - value: from them count, sum and mean at once. */
   | { readonly kind: 'twin'; readonly units: Units; readonly filter: Scalar | null; readonly rows: bigint }
+  /**
+   * Three sums, of (high - value)², 2 (value - low)(high - value) and (value - low)²: they are never negative and add up to width² a row, and from them come
+   * count, mean and variance.
+   */
+  | { readonly kind: 'triple'; readonly units: Units; readonly filter: Scalar | null; readonly rows: bigint }
+
+/** The variance of the rows, or its square root, with n or n - 1 below it. */
+export type Spread = 'var_pop' | 'var_samp' | 'stddev_pop' | 'stddev_samp'
 
 /** A column of the released table that is made of totals. */
 export type Output =
   | { readonly kind: 'count'; readonly total: number }
   | { readonly kind: 'sum'; readonly total: number }
   | { readonly kind: 'mean'; readonly total: number }
+  | { readonly kind: 'spread'; readonly total: number; readonly of: Spread }
 
 export interface Key {
   /** In canonical form: equal values print alike. */
@@ -40,7 +49,15 @@ export type ListFactor =
   | { readonly kind: 'texts'; readonly key: number; readonly type: ScalarType; readonly texts: readonly (string | null)[] }
   | { readonly kind: 'column'; readonly key: number; readonly table: string; readonly column: string; readonly nullable: boolean }
   /** Every `step` between two fixed instants or whole numbers, brought to the key's form by `unit`. */
-  | { readonly kind: 'instants'; readonly key: number; readonly type: ScalarType; readonly low: Scalar; readonly high: Scalar; readonly unit: string; readonly nullable: boolean }
+  | {
+      readonly kind: 'instants'
+      readonly key: number
+      readonly type: ScalarType
+      readonly low: Scalar
+      readonly high: Scalar
+      readonly unit: string
+      readonly nullable: boolean
+    }
   | { readonly kind: 'numbers'; readonly key: number; readonly type: ScalarType; readonly low: Scalar; readonly high: Scalar; readonly nullable: boolean }
   /** The published part of the FROM itself. */
   | { readonly kind: 'component'; readonly keys: readonly number[]; readonly source: Source; readonly tests: readonly Scalar[]; readonly padded: boolean }

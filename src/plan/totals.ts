@@ -11,7 +11,7 @@ import { provedStep } from './lower-column.ts'
 import { lowerCondition, lowerExpr } from './lower-expr.ts'
 import type { Owned } from './owned.ts'
 import { keepsPadding, paddingValue } from './padding.ts'
-import type { Output, Total, Units } from './release-plan.ts'
+import type { Output, Spread, Total, Units } from './release-plan.ts'
 import { scansIn, type Scan } from './relation.ts'
 import type { Scope } from './scope.ts'
 
@@ -20,6 +20,16 @@ export type Aggregate =
   | { readonly kind: 'rows'; readonly of: Scalar | null; readonly filter: Scalar | null; readonly at: number }
   | { readonly kind: 'persons'; readonly filter: Scalar | null; readonly at: number }
   | { readonly kind: 'sum' | 'mean'; readonly of: Scalar; readonly filter: Scalar | null; readonly at: number }
+  | { readonly kind: 'spread'; readonly spread: Spread; readonly of: Scalar; readonly filter: Scalar | null; readonly at: number }
+
+const spreads: Readonly<Record<string, Spread>> = {
+  var_pop: 'var_pop',
+  var_samp: 'var_samp',
+  variance: 'var_samp',
+  stddev_pop: 'stddev_pop',
+  stddev_samp: 'stddev_samp',
+  stddev: 'stddev_samp',
+}
 
 /** Reads one aggregate call over the block's relation, or refuses it. */
 export function lowerAggregate(call: Call, scope: Scope, owned: Owned, context: Context): Aggregate {
@@ -31,13 +41,16 @@ export function lowerAggregate(call: Call, scope: Scope, owned: Owned, context: 
   if (first === undefined || more !== undefined) return refuse('block.aggregate', { what: name }, call.at)
   const of = lowerExpr(first, scope, context)
   if (name === 'count' && call.distinct) {
-    if (of.node.kind !== 'column' || !owned.classes.same({ scan: of.node.scan, column: of.node.column }, owned.person)) refuse('block.aggregate', { what: 'count(DISTINCT …) of anything but the person' }, call.at)
+    if (of.node.kind !== 'column' || !owned.classes.same({ scan: of.node.scan, column: of.node.column }, owned.person))
+      refuse('block.aggregate', { what: 'count(DISTINCT …) of anything but the person' }, call.at)
     return { kind: 'persons', filter, at: call.at }
   }
   if (call.distinct) return refuse('block.aggregate', { what: `${name}(DISTINCT …)` }, call.at)
   if (name === 'count') return checkPadding({ kind: 'rows', of, filter, at: call.at }, 'this count', owned)
-  if (name !== 'sum' && name !== 'avg') return refuse('block.aggregate', { what: name }, call.at)
+  const spread = spreads[name]
+  if (name !== 'sum' && name !== 'avg' && spread === undefined) return refuse('block.aggregate', { what: name }, call.at)
   if (!isNumber(of.type)) return refuse('block.aggregate', { what: `${name} over ${of.type.name}` }, call.at)
+  if (spread !== undefined) return checkPadding({ kind: 'spread', spread, of, filter, at: call.at }, name, owned)
   return checkPadding({ kind: name === 'sum' ? 'sum' : 'mean', of, filter, at: call.at }, name, owned)
 }
 
@@ -52,18 +65,18 @@ function checkPadding<A extends Aggregate>(aggregate: A, what: string, owned: Ow
 /** Rows of a person that count in one group: those of the table whose rows are counted, or fewer where the analyst says so. */
 export function rowsFor(reads: ReadonlySet<number>, owned: Owned, fanOut: FanOut, limit: bigint | null): bigint {
   if (fanOut.single) return 1n
-  const many = [...scansIn(owned.source)].filter(scan => fanOut.leaves.has(scan.index))
-  const read = many.filter(scan => reads.has(scan.index))
+  const many = [...scansIn(owned.source)].filter((scan) => fanOut.leaves.has(scan.index))
+  const read = many.filter((scan) => reads.has(scan.index))
   const tables = (read.length > 0 ? read : many).map(boundsOf)
-  const rows = tables.map(bounds => bounds.rows).reduce((a, b) => (a > b ? a : b), 1n)
+  const rows = tables.map((bounds) => bounds.rows).reduce((a, b) => (a > b ? a : b), 1n)
   return limit !== null && limit < rows ? limit : rows
 }
 
 /** Groups a person may touch. */
 export function groupsFor(owned: Owned, fanOut: FanOut, limit: bigint | null): bigint {
-  const scans = [...scansIn(owned.source)].filter(scan => scan.table.kind === 'private')
-  const many = scans.filter(scan => fanOut.leaves.has(scan.index))
-  const groups = (many.length > 0 ? many : scans).map(scan => boundsOf(scan).groups).reduce((a, b) => (a > b ? a : b), 1n)
+  const scans = [...scansIn(owned.source)].filter((scan) => scan.table.kind === 'private')
+  const many = scans.filter((scan) => fanOut.leaves.has(scan.index))
+  const groups = (many.length > 0 ? many : scans).map((scan) => boundsOf(scan).groups).reduce((a, b) => (a > b ? a : b), 1n)
   return limit !== null && limit < groups ? limit : groups
 }
 
@@ -82,10 +95,11 @@ export function unitsOf(of: Scalar, name: string, rows: bigint, scans: readonly 
   }
   const column = of.node.kind === 'column' ? columnOf(of.node.scan, of.node.column, scans) : null
   const bounded = clamped(of)
-  if (bounded.range === null || (column !== null && column.clamp === null)) refuse('expr.clamp', { what: name, expression: column === null ? 'this expression' : `"${column.name}"` }, of.at)
+  if (bounded.range === null || (column !== null && column.clamp === null))
+    refuse('expr.clamp', { what: name, expression: column === null ? 'this expression' : `"${column.name}"` }, of.at)
   const step = gridOf(bounded, column === null ? null : provedStep(column))
   const [low, high] = [bounded.range.low.div(step).floor(), bounded.range.high.div(step).ceil()]
-  const size = [low, high].map(units => (units < 0n ? -units : units)).reduce((a, b) => (a > b ? a : b))
+  const size = [low, high].map((units) => (units < 0n ? -units : units)).reduce((a, b) => (a > b ? a : b))
   if (size * rows * 2n >= most) refuse('expr.clamp', { what: name, expression: 'a narrower clamp or a coarser step for this value; its' }, of.at)
   return { value: bare(bounded), step, low, high }
 }
@@ -111,20 +125,28 @@ function gridOf(value: Scalar, proved: Fraction | null): Fraction {
 }
 
 /** Aggregates that share a value and a filter share totals: a mean brings its count and sum along. */
-export function totalsOf(aggregates: readonly Aggregate[], owned: Owned, fanOut: FanOut, limit: bigint | null, scans: readonly Scan[]): { readonly totals: readonly Total[]; readonly outputs: readonly Output[] } {
+export function totalsOf(
+  aggregates: readonly Aggregate[],
+  owned: Owned,
+  fanOut: FanOut,
+  limit: bigint | null,
+  scans: readonly Scan[],
+): { readonly totals: readonly Total[]; readonly outputs: readonly Output[] } {
   const totals: Total[] = []
   const add = (total: Total): number => {
-    const found = totals.findIndex(other => sameTotal(other, total))
+    const found = totals.findIndex((other) => sameTotal(other, total))
     return found >= 0 ? found : totals.push(total) - 1
   }
-  const rows = (of: Scalar | null, filter: Scalar | null): bigint => rowsFor(new Set([...(of === null ? [] : scansOf(of)), ...(of === null && filter !== null ? scansOf(filter) : [])]), owned, fanOut, limit)
+  const rows = (of: Scalar | null, filter: Scalar | null): bigint =>
+    rowsFor(new Set([...(of === null ? [] : scansOf(of)), ...(of === null && filter !== null ? scansOf(filter) : [])]), owned, fanOut, limit)
   const twin = (of: Scalar, filter: Scalar | null): number => {
     const units = unitsOf(of, 'avg', rows(of, filter), scans)
     // twins share out the width between them, so there must be one
     const low = units.low === units.high ? units.low - 1n : units.low
     return add({ kind: 'twin', units: { ...units, low }, filter, rows: rows(of, filter) })
   }
-  const hasMean = (of: Scalar, filter: Scalar | null): boolean => aggregates.some(other => other.kind === 'mean' && sameScalar(other.of, of) && sameFilter(other.filter, filter))
+  const hasMean = (of: Scalar, filter: Scalar | null): boolean =>
+    aggregates.some((other) => other.kind === 'mean' && sameScalar(other.of, of) && sameFilter(other.filter, filter))
   const outputs = aggregates.map((aggregate): Output => {
     switch (aggregate.kind) {
       case 'persons':
@@ -132,16 +154,47 @@ export function totalsOf(aggregates: readonly Aggregate[], owned: Owned, fanOut:
       case 'rows': {
         const of = aggregate.of
         if (of !== null && isNumber(of.type) && hasMean(of, aggregate.filter)) return { kind: 'count', total: twin(of, aggregate.filter) }
-        return { kind: 'count', total: add({ kind: 'rows', of: of !== null && !of.nullable ? null : of, filter: aggregate.filter, rows: rows(of, aggregate.filter) }) }
+        return {
+          kind: 'count',
+          total: add({ kind: 'rows', of: of !== null && !of.nullable ? null : of, filter: aggregate.filter, rows: rows(of, aggregate.filter) }),
+        }
       }
       case 'sum':
         if (hasMean(aggregate.of, aggregate.filter)) return { kind: 'sum', total: twin(aggregate.of, aggregate.filter) }
-        return { kind: 'sum', total: add({ kind: 'sum', units: unitsOf(aggregate.of, 'sum', rows(aggregate.of, aggregate.filter), scans), filter: aggregate.filter, rows: rows(aggregate.of, aggregate.filter) }) }
+        return {
+          kind: 'sum',
+          total: add({
+            kind: 'sum',
+            units: unitsOf(aggregate.of, 'sum', rows(aggregate.of, aggregate.filter), scans),
+            filter: aggregate.filter,
+            rows: rows(aggregate.of, aggregate.filter),
+          }),
+        }
       case 'mean':
         return { kind: 'mean', total: twin(aggregate.of, aggregate.filter) }
+      case 'spread': {
+        const units = coarse(unitsOf(aggregate.of, aggregate.spread, rows(aggregate.of, aggregate.filter), scans), rows(aggregate.of, aggregate.filter))
+        return {
+          kind: 'spread',
+          of: aggregate.spread,
+          total: add({ kind: 'triple', units, filter: aggregate.filter, rows: rows(aggregate.of, aggregate.filter) }),
+        }
+      }
     }
   })
   return { totals, outputs }
+}
+
+/** The same value on a grid so coarse that the squares of a person's rows fit 62 bits, and with a width to share out. */
+function coarse(units: Units, rows: bigint): Units {
+  let { step, low, high } = units
+  const ten = Fraction.make(10n)
+  while ((high - low) * (high - low) * rows * 2n >= most) {
+    step = step.mul(ten)
+    low = Fraction.make(low).div(ten).floor()
+    high = Fraction.make(high).div(ten).ceil()
+  }
+  return { ...units, step, low: low === high ? low - 1n : low, high }
 }
 
 function sameFilter(a: Scalar | null, b: Scalar | null): boolean {

@@ -12,15 +12,6 @@ export function placesOf(step: Fraction): number {
   return places
 }
 
-/** A quotient of which the parts are not known, in as many places as PostgreSQL's numeric division gives at least: 16 significant digits, in groups of four. */
-export function quotientText(value: Fraction): string {
-  const size = value.isLess(Fraction.zero) ? value.neg() : value
-  let places = 16
-  if (size.isLess(Fraction.one)) places = 20
-  for (let bound = Fraction.make(10_000n); places > 0 && bound.isAtMost(size); bound = bound.mul(Fraction.make(10_000n))) places -= 4
-  return value.toDecimal(places, 'nearest')
-}
-
 /** The weight of the leading digit of a number in base 10000, and that digit. */
 function leading(value: Fraction): { readonly weight: number; readonly digit: bigint } {
   const base = Fraction.make(10_000n)
@@ -32,7 +23,7 @@ function leading(value: Fraction): { readonly weight: number; readonly digit: bi
 }
 
 /** sum / count in as many places as PostgreSQL's numeric division gives: at least 16 significant digits, in groups of four, and never fewer places than the sum has. */
-export function meanText(sum: Fraction, count: Fraction, sumPlaces: number): string {
+export function quotientText(sum: Fraction, count: Fraction, sumPlaces: number): string {
   const [above, below] = [leading(sum), leading(count)]
   const weight = above.weight - below.weight - (above.digit <= below.digit ? 1 : 0)
   const wanted = 16 - 4 * weight

@@ -1,26 +1,11 @@
 import { unreachable } from '../base/check.ts'
-import { sqrt } from '../base/exponential.ts'
 import { Fraction } from '../base/fraction.ts'
 import { varianceOf, margin } from '../noise/mechanism.ts'
 import type { Mechanism } from '../noise/make-mechanism.ts'
-import { normalQuantile } from '../noise/quantile.ts'
 import type { Output, ReleasePlan, Units } from '../plan/release-plan.ts'
-import { decimalOf, nearest, quotientText, wholeText } from './numbers.ts'
-
-/** A total after noise: one number, or a twin's two. */
-export type Noisy = readonly bigint[]
-
-/** What a released value shows. Computed from noisy totals alone: post-processing. */
-export interface Shown {
-  readonly text: string | null
-  /** Half-width at the asked confidence, of the noise alone; null where the noisy count is too weak to say. */
-  readonly margin: Fraction | null
-}
-
-export interface ShowOptions {
-  readonly confidence: Fraction
-  readonly nonnegative: boolean
-}
+import { type Noisy, ofVariance, type Shown, type ShowOptions, square, width } from './shown.ts'
+import { spread } from './spread.ts'
+import { decimalOf, nearest, placesOf, quotientText, wholeText } from './numbers.ts'
 
 /** One output of one group. */
 export function show(plan: ReleasePlan, output: Output, noisy: readonly Noisy[], mechanisms: readonly Mechanism[], options: ShowOptions): Shown {
@@ -31,7 +16,15 @@ export function show(plan: ReleasePlan, output: Output, noisy: readonly Noisy[],
   switch (output.kind) {
     case 'count': {
       const value = total.kind === 'twin' ? nearest(countOf(a, b, total.units)) : a
-      const half = total.kind === 'twin' ? ofVariance(varianceOf(mechanism).mul(Fraction.make(2n)).div(square(width(total.units))), options) : Fraction.make(margin(mechanism, options.confidence))
+      const half =
+        total.kind === 'twin'
+          ? ofVariance(
+              varianceOf(mechanism)
+                .mul(Fraction.make(2n))
+                .div(square(width(total.units))),
+              options,
+            )
+          : Fraction.make(margin(mechanism, options.confidence))
       return { text: wholeText(options.nonnegative && value < 0n ? 0n : value), margin: half }
     }
     case 'sum': {
@@ -42,32 +35,27 @@ export function show(plan: ReleasePlan, output: Output, noisy: readonly Noisy[],
         return { text: decimalOf(value.mul(total.units.step), total.units.step), margin: ofVariance(varianceOf(mechanism).mul(spread), options) }
       }
       if (total.kind !== 'sum') throw new RangeError('a sum is made of a sum')
-      return { text: decimalOf(Fraction.make(a).mul(total.units.step), total.units.step), margin: Fraction.make(margin(mechanism, options.confidence)).mul(total.units.step) }
+      return {
+        text: decimalOf(Fraction.make(a).mul(total.units.step), total.units.step),
+        margin: Fraction.make(margin(mechanism, options.confidence)).mul(total.units.step),
+      }
     }
     case 'mean': {
       if (total.kind !== 'twin') throw new RangeError('a mean is made of twins')
       return mean(a, b, total.units, varianceOf(mechanism), options)
+    }
+    case 'spread': {
+      if (total.kind !== 'triple') throw new RangeError('a spread is made of triples')
+      return spread(output.of, noisy[output.total] ?? [], total.units, varianceOf(mechanism), options)
     }
     default:
       return unreachable(output)
   }
 }
 
-function width(units: Units): Fraction {
-  return Fraction.make(units.high - units.low)
-}
-
-function square(value: Fraction): Fraction {
-  return value.mul(value)
-}
-
 /** The noisy number of rows of a twin. */
 function countOf(a: bigint, b: bigint, units: Units): Fraction {
   return Fraction.make(a + b).div(width(units))
-}
-
-function ofVariance(variance: Fraction, options: ShowOptions): Fraction {
-  return normalQuantile(options.confidence).mul(sqrt(variance, 'up', 64n))
 }
 
 /**
@@ -78,9 +66,15 @@ function mean(a: bigint, b: bigint, units: Units, variance: Fraction, options: S
   const both = a + b
   if (both <= 0n) return { text: null, margin: null }
   const share = Fraction.make(a).div(Fraction.make(both)).max(Fraction.zero).min(Fraction.one)
-  const value = Fraction.make(units.low).add(share.mul(width(units))).mul(units.step)
+  const value = Fraction.make(units.low)
+    .add(share.mul(width(units)))
+    .mul(units.step)
   const sum = square(Fraction.make(both))
   const weak = sum.isLess(variance.mul(Fraction.make(2n)).mul(Fraction.make(25n)))
-  const spread = Fraction.make(a * a + b * b).div(square(sum)).mul(square(width(units).mul(units.step))).mul(variance)
-  return { text: quotientText(value), margin: weak ? null : ofVariance(spread, options) }
+  const spread = Fraction.make(a * a + b * b)
+    .div(square(sum))
+    .mul(square(width(units).mul(units.step)))
+    .mul(variance)
+  const count = countOf(a, b, units)
+  return { text: quotientText(value.mul(count), count, placesOf(units.step)), margin: weak ? null : ofVariance(spread, options) }
 }

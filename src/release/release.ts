@@ -4,11 +4,13 @@ import type { Debit } from '../budget/debit.ts'
 import type { BitSource } from '../noise/bits.ts'
 import type { Mechanism } from '../noise/make-mechanism.ts'
 import { draw } from '../noise/mechanism.ts'
+import { coordinatesOf } from '../bound/reach.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import { type ExactRow, type ExactTable, openExact } from './exact.ts'
 
 export type { ExactTable } from './exact.ts'
-import { type Noisy, show, type ShowOptions } from './outputs.ts'
+import { show } from './outputs.ts'
+import type { Noisy, ShowOptions } from './shown.ts'
 
 export type KeyTexts = readonly (string | null)[]
 
@@ -44,26 +46,26 @@ export function release(table: ExactTable, debit: Debit, order: ReleaseOrder, bi
   for (const group of groups) {
     const noisy = addNoise(order, group.values, bits)
     if (!isShown(order, noisy)) continue
-    const outputs = order.plan.outputs.map(output => show(order.plan, output, noisy, order.mechanisms, order.show))
+    const outputs = order.plan.outputs.map((output) => show(order.plan, output, noisy, order.mechanisms, order.show))
     for (const [i, output] of outputs.entries()) {
       const widest = margins[i] ?? null
       if (output.margin !== null && (widest === null || widest.isLess(output.margin))) margins[i] = output.margin
     }
-    rows.push(order.plan.columns.map(column => (column.kind === 'key' ? (group.keys[column.index] ?? null) : (outputs[column.index]?.text ?? null))))
+    rows.push(order.plan.columns.map((column) => (column.kind === 'key' ? (group.keys[column.index] ?? null) : (outputs[column.index]?.text ?? null))))
   }
   return { id, rows, margins }
 }
 
 function groupsOf(order: ReleaseOrder, totals: readonly ExactRow[]): readonly ExactRow[] {
-  const empty = order.plan.totals.flatMap(total => (total.kind === 'twin' ? [0n, 0n] : [0n]))
-  const exact = new Map(totals.map(row => [keyText(row.keys), row]))
+  const empty = order.plan.totals.flatMap((total) => Array.from({ length: coordinatesOf(total) }, () => 0n))
+  const exact = new Map(totals.map((row) => [keyText(row.keys), row]))
   check(exact.size === totals.length, 'the vault gives each group once')
   switch (order.plan.groups.kind) {
     case 'one':
       return [{ keys: [], values: totals[0]?.values ?? empty }]
     case 'listed': {
       check(order.listed !== null, 'listed groups come with their list')
-      const once = new Map(order.listed.map(keys => [keyText(keys), keys]))
+      const once = new Map(order.listed.map((keys) => [keyText(keys), keys]))
       return sorted([...once.entries()].map(([text, keys]) => ({ keys, values: exact.get(text)?.values ?? empty })))
     }
     case 'selected':
@@ -87,7 +89,7 @@ function addNoise(order: ReleaseOrder, values: readonly bigint[], bits: BitSourc
   const noisy = order.plan.totals.map((total, i): Noisy => {
     const mechanism = order.mechanisms[i]
     check(mechanism !== undefined, 'every total has its mechanism')
-    const coordinates = total.kind === 'twin' ? 2 : 1
+    const coordinates = coordinatesOf(total)
     return Array.from({ length: coordinates }, () => {
       const value = values[next]
       check(value !== undefined, 'the vault gives every total')
