@@ -20,24 +20,25 @@ export interface FanOut {
   readonly single: boolean
 }
 
-function knownColumn(owned: Owned, known: ReadonlySet<number>, ref: ColumnRef, scans: readonly Scan[]): boolean {
+function knownColumn(owned: Owned, known: ReadonlySet<number>, ref: ColumnRef, scans: readonly Scan[], matched: boolean): boolean {
   if (owned.classes.same(ref, owned.person)) return true
   const of = (other: ColumnRef): boolean => known.has(other.scan) || owned.classes.same(other, owned.person)
   for (const scan of scans) {
     if (!known.has(scan.index)) continue
     for (const column of scan.table.columns.keys()) if (owned.classes.same(ref, { scan: scan.index, column })) return true
   }
+  if (matched && owned.directed.some(([from, to]) => to.scan === ref.scan && to.column === ref.column && known.has(from.scan))) return true
   return owned.directed.some(([from, to]) => from.scan === ref.scan && from.column === ref.column && of(to))
 }
 
-/** Scans that have at most one row once the scans of `known` are fixed. */
-function close(owned: Owned, known: ReadonlySet<number>, scans: readonly Scan[]): ReadonlySet<number> {
+/** Scans that have at most one row once the scans of `known` are fixed; `matched`: among the rows of LEFT JOINs that found a match. */
+function close(owned: Owned, known: ReadonlySet<number>, scans: readonly Scan[], matched = false): ReadonlySet<number> {
   const closed = new Set(known)
   for (let changed = true; changed; ) {
     changed = false
     for (const scan of scans) {
       if (closed.has(scan.index)) continue
-      if (uniqueKeysOf(scan).some(key => key.every(column => knownColumn(owned, closed, { scan: scan.index, column }, scans)))) {
+      if (uniqueKeysOf(scan).some(key => key.every(column => knownColumn(owned, closed, { scan: scan.index, column }, scans, matched)))) {
         closed.add(scan.index)
         changed = true
       }
@@ -77,6 +78,7 @@ export function fanOut(owned: Owned): FanOut {
   const counted = leaves.filter(scan => scan.table.kind !== 'private')
   const single = leaves.length === 0
   if (leaves.length <= 1 && counted.length === 0) return { determined, capped: new Map(), counted: [], leaves: ownLeaves, single }
+  if (counted.length === 0 && addsUp(owned, own, scans)) return { determined, capped: new Map(), counted: [], leaves: ownLeaves, single }
   const published = listedRows ** BigInt(counted.length)
   const each = root(joinedRows / published, own.length)
   if (counted.length > 2 || (own.length > 0 && each < 4n)) refuse('join.fan-out', { ceiling: listedRows.toString() }, leaves.at(-1)?.at ?? -1)
@@ -87,6 +89,14 @@ export function fanOut(owned: Owned): FanOut {
     capped.set(scan.index, each)
   }
   return { determined, capped, counted: counted.map(scan => scan.index), leaves: ownLeaves, single: false }
+}
+
+/** Whether two leaves meet in a LEFT JOIN in which a row of the one has at most one match in the other: then there are no more rows than both have together. */
+function addsUp(owned: Owned, own: readonly Scan[], scans: readonly Scan[]): boolean {
+  const [a, b, more] = own
+  if (a === undefined || b === undefined || more !== undefined) return false
+  const meets = (one: Scan, other: Scan): boolean => close(owned, new Set([one.index]), scans, true).has(other.index)
+  return meets(a, b) || meets(b, a)
 }
 
 /** The largest whole number whose `power`-th power is at most `value`. */

@@ -85,6 +85,16 @@ function publishedTable(table: CatalogTable): PublishedTable {
   }
 }
 
+/** As the table has them, and so its shell: what a star means, and which column a renaming alias names. */
+function inOrder(columns: ReadonlyMap<string, DataColumn>, table: CatalogTable): ReadonlyMap<string, DataColumn> {
+  return new Map(
+    table.columns.flatMap(({ name }) => {
+      const column = columns.get(name)
+      return column === undefined ? [] : [[name, column] as const]
+    }),
+  )
+}
+
 function privateTable(
   draft: DraftDataSet,
   tables: Schemed,
@@ -130,7 +140,7 @@ function privateTable(
     owner,
     bounds,
     onePerPerson,
-    columns,
+    columns: inOrder(columns, table),
     uniqueKeys: provedKeys(table),
     primaryKey: table.primaryKey,
   }

@@ -1,0 +1,2 @@
+-- count(*) of a table is its number of rows
+SELECT count(*) FROM trips;

@@ -1,0 +1,3 @@
+-- LIMIT 0 over rows too
+-- free
+SELECT * FROM riders LIMIT 0;

@@ -1,0 +1,3 @@
+-- WHERE false over rows of every type
+-- free
+SELECT * FROM events WHERE false;

@@ -1,0 +1,2 @@
+-- a column of FROM comes before an alias of the list
+SELECT count(*) AS concession FROM riders GROUP BY concession;

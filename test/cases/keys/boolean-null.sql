@@ -1,0 +1,2 @@
+-- a nullable boolean has three groups
+SELECT newsletter, count(*) FROM riders GROUP BY newsletter;

@@ -1,0 +1,3 @@
+-- GROUP BY without an aggregate lists the groups, for nothing
+-- free
+SELECT concession FROM riders GROUP BY concession;

@@ -1,0 +1,2 @@
+-- an expression over keys
+SELECT 'is ' || kind::text AS what, count(*) FROM trips GROUP BY kind;

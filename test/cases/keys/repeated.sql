@@ -1,0 +1,2 @@
+-- the same key twice
+SELECT kind, kind AS again, count(*) FROM trips GROUP BY kind, kind;

@@ -1,0 +1,2 @@
+-- avg of a double precision column
+SELECT avg(weight_kg) FROM trips;

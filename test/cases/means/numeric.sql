@@ -1,0 +1,2 @@
+-- avg of a numeric column
+SELECT avg(delay_min) FROM trips;

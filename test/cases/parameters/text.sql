@@ -1,0 +1,3 @@
+-- a text parameter
+-- parameter: text Eastquay
+SELECT count(*) FROM riders WHERE district = $1;

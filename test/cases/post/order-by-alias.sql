@@ -1,0 +1,3 @@
+-- ORDER BY an alias, descending
+-- ordered
+SELECT kind, sum(fare_pence) AS pence FROM trips GROUP BY kind ORDER BY pence DESC, kind;

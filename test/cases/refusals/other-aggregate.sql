@@ -1,0 +1,3 @@
+-- an aggregate that has no bound
+-- refused: block.aggregate
+SELECT string_agg(note, ',') FROM trips;

@@ -1,0 +1,3 @@
+-- rows of people are not shown
+-- refused: rows.private
+SELECT * FROM trips;

@@ -1,0 +1,2 @@
+-- a block inside VALUES
+VALUES ((SELECT count(*) FROM trips), 'trips'), ((SELECT count(*) FROM riders), 'riders');

@@ -1,0 +1,2 @@
+-- sum of a numeric column keeps its decimals
+SELECT sum(delay_min) FROM trips;
