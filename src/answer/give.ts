@@ -162,6 +162,8 @@ async function atItsInstant(work: Promise<ReleasedTable>, start: number, classes
       continue
     }
     if ('table' in outcome) return outcome.table
+    // that it failed may be the rows' doing, as is a reply that comes late
+    if (i === 0) parts.overruns.count(account, parts.clock.now())
     throw outcome.failure
   }
   void done

@@ -1,6 +1,8 @@
+import { Fraction } from '../base/fraction.ts'
+import { refuse } from '../base/refusal.ts'
 import { cast } from '../catalog/build.ts'
 import { endsOf } from '../catalog/functions/times.ts'
-import { isFixed, type Scalar } from '../catalog/scalar.ts'
+import { isFixed, type Range, type Scalar } from '../catalog/scalar.ts'
 import { listedIn, scalarsOf, selectQuery, target } from './print-source.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import type { Query } from '../sql/tree.ts'
@@ -29,12 +31,23 @@ export function fixedExpressions(plan: ReleasePlan): readonly Scalar[] {
   return [...found.values()]
 }
 
+function holds(range: Range | null, text: string | null): boolean {
+  if (range === null || text === null) return true
+  try {
+    const value = Fraction.parse(text)
+    return range.low.isAtMost(value) && value.isAtMost(range.high)
+  } catch {
+    return false // NaN and the infinities
+  }
+}
+
 /** One row of texts, a column an expression. */
 export function fixedSql(expressions: readonly Scalar[]): Query {
   return selectQuery({ targets: expressions.map((scalar, i) => target(cast(printScalar(scalar, noFixedValues), 'text'), `v${i.toString()}`)), from: [] })
 }
 
-/** The computed values by what names them. */
+/** The computed values by what names them. Refused where one lies outside of what the plan holds it to be, as the year of infinity does. */
 export function fixedValues(expressions: readonly Scalar[], row: readonly (string | null)[]): FixedValues {
+  for (const [i, scalar] of expressions.entries()) if (!holds(scalar.range, row[i] ?? null)) refuse('expr.unbounded', { expression: 'a value of the statement’s own' }, scalar.at)
   return new Map(expressions.map((scalar, i) => [fixedKey(scalar), row[i] ?? null]))
 }

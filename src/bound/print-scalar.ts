@@ -64,7 +64,8 @@ function printClamped(raw: Expr, scalar: Scalar, clamp: Clamp): Expr {
     const value = clamp.step !== null && scalar.carrier === 'numeric' ? onGrid(cast(inside, 'numeric'), clamp.step) : inside
     return scalar.nullable ? when(isNull(raw), nothing(), value) : value
   }
-  const exact = family === 'float' ? cast(inside, 'numeric') : inside
+  // a float comes to numeric with 6 or 15 digits, which may lie beyond the clamp that the float kept to
+  const exact = family === 'float' ? extreme('greatest', numeric(clamp.low), extreme('least', numeric(clamp.high), cast(inside, 'numeric'))) : inside
   const value = clamp.step === null ? exact : onGrid(exact, clamp.step)
   return when(logic('or', [isNull(raw), operator(raw, '=', cast(text('NaN'), name))]), nothing(), value)
 }

@@ -3,6 +3,7 @@ import { refuse } from '../base/refusal.ts'
 import { parts, scansOf, type Scalar } from '../catalog/scalar.ts'
 import { isNumber, scalarType } from '../catalog/scalar-type.ts'
 import { settle } from '../catalog/functions/comparisons.ts'
+import { fitsFloat } from '../catalog/functions/numbers.ts'
 import { columnOf, domainOf } from './key-domain.ts'
 import type { Key, ListFactor } from './release-plan.ts'
 import type { FanOut } from './fan-out.ts'
@@ -26,6 +27,7 @@ const limits: Readonly<Record<string, bigint>> = { int2: 2n ** 15n - 1n, int4: 2
 
 /** A key computed in a wider type must fit its own. */
 function fits(scalar: Scalar): void {
+  if (scalar.type.name === 'float4' || scalar.type.name === 'float8') return fitsFloat(scalar, scalar.type.name)
   const limit = limits[scalar.type.name]
   if (limit === undefined) return
   const range = scalar.range

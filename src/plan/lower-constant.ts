@@ -33,12 +33,19 @@ export function fixedValue(type: ScalarType, text: string | null, at: number): S
 
 function exactRange(type: ScalarType, text: string): Range | null {
   if (!isNumber(type)) return null
+  if (type.family === 'float' && !isExactAs(type.name, text)) return null
   try {
     const value = Fraction.parse(text.trim())
     return { low: value, high: value, step: value.isLess(Fraction.zero) ? value.neg() : value }
   } catch {
     return null // NaN, infinity: no range, so arithmetic with it is refused
   }
+}
+
+/** Whether the float of that text, brought to numeric, is the text's own value: it has no more digits than PostgreSQL prints there, and no size at which bits are lost. */
+function isExactAs(name: string, text: string): boolean {
+  const [, whole = '', rest = ''] = /^\s*[+-]?(\d*)\.?(\d*)\s*$/.exec(text) ?? []
+  return whole + rest !== '' && `${whole}${rest}`.replace(/^0+/, '').length <= (name === 'float4' ? 6 : 15) && rest.length <= 30
 }
 
 /** A parameter: its value where the statement runs; before that, something of its type that stands in for any value. */

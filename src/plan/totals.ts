@@ -97,7 +97,7 @@ export function unitsOf(of: Scalar, name: string, rows: bigint, scans: readonly 
   const bounded = clamped(of)
   if (bounded.range === null || (column !== null && column.clamp === null))
     refuse('expr.clamp', { what: name, expression: column === null ? 'this expression' : `"${column.name}"` }, of.at)
-  const step = gridOf(bounded, column === null ? null : provedStep(column))
+  const step = column?.step != null && of.type.family === 'integer' ? Fraction.parse(column.step) : gridOf(bounded, column === null ? null : provedStep(column))
   const [low, high] = [bounded.range.low.div(step).floor(), bounded.range.high.div(step).ceil()]
   const size = [low, high].map((units) => (units < 0n ? -units : units)).reduce((a, b) => (a > b ? a : b))
   if (size * rows * 2n >= most) refuse('expr.clamp', { what: name, expression: 'a narrower clamp or a coarser step for this value; its' }, of.at)

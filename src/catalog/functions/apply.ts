@@ -1,4 +1,5 @@
-import type { Range, Scalar } from '../scalar.ts'
+import { refuse } from '../../base/refusal.ts'
+import type { Range, Scalar, ScalarNode } from '../scalar.ts'
 import type { ScalarType } from '../scalar-type.ts'
 import { type FormName, formOf } from './forms.ts'
 
@@ -9,12 +10,24 @@ interface More {
   readonly at: number
 }
 
+const largestExpression = 5000
+const sizes = new WeakMap<ScalarNode, number>()
+
+function sizeOf(scalar: Scalar): number {
+  return sizes.get(scalar.node) ?? 1
+}
+
 /** A node over the row `form`; the resolvers in this folder are the only callers, so that every expression is one of the table. */
 export function apply(form: FormName, args: readonly Scalar[], type: ScalarType, more: More): Scalar {
   formOf(form)
+  const size = args.reduce((sum, arg) => sum + sizeOf(arg), 1)
+  // derived tables that use a column twice double an expression each time
+  if (size > largestExpression) refuse('expr.unsupported', { what: `an expression of more than ${largestExpression.toString()} parts` }, more.at)
+  const node: ScalarNode = { kind: 'apply', form, args, words: more.words ?? [] }
+  sizes.set(node, size)
   return {
     type,
-    node: { kind: 'apply', form, args, words: more.words ?? [] },
+    node,
     nullable: more.nullable ?? args.some(arg => arg.nullable),
     range: more.range ?? null,
     carrier: 'own',

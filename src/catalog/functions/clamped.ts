@@ -16,7 +16,8 @@ export function onGrid(scalar: Scalar, clamp: Clamp): boolean {
 }
 
 function rangeOfClamp(scalar: Scalar, clamp: Clamp): Range {
-  const step = clamp.step !== null ? Fraction.parse(clamp.step) : scalar.type.family === 'integer' ? Fraction.one : (scalar.range?.step ?? null)
+  // only what is printed on the grid is on it: an integer column is clamped, never rounded to its step
+  const step = scalar.type.family === 'integer' ? Fraction.one : clamp.step !== null ? Fraction.parse(clamp.step) : (scalar.range?.step ?? null)
   return { low: Fraction.parse(clamp.low), high: Fraction.parse(clamp.high), step }
 }
 

@@ -39,9 +39,8 @@ export function compare(form: '=' | '<>' | '<' | '<=' | '>' | '>=' | 'distinct' 
 export function inList(arg: Scalar, list: readonly Scalar[], negated: boolean, at: number): Scalar {
   const settled = settle(arg, commonType(list))
   const entries = list.map(entry => settle(entry, settled.type))
-  for (const entry of entries) {
-    if (!match(settled.type, entry.type)) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${entry.type.name}` }, entry.at)
-    comparable(settled, entry)
-  }
-  return apply(negated ? 'not-in' : 'in', [settled, ...entries], bool, { at })
+  for (const entry of entries) if (!match(settled.type, entry.type)) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${entry.type.name}` }, entry.at)
+  const pairs = entries.map(entry => comparable(settled, entry))
+  const subject = pairs.map(([left]) => left).find(left => left !== settled) ?? settled
+  return apply(negated ? 'not-in' : 'in', [subject, ...pairs.map(([, entry]) => entry)], bool, { at })
 }

@@ -5,7 +5,7 @@ import { isNumber, promote, sameType, scalarType, type ScalarType } from '../sca
 import { apply } from './apply.ts'
 import { clamped } from './clamped.ts'
 import { commonType, compare, settle } from './comparisons.ts'
-import { asNumeric, commonStep } from './numbers.ts'
+import { asNumeric, commonStep, comparable } from './numbers.ts'
 
 const bool = scalarType('bool')
 
@@ -92,6 +92,8 @@ export function extreme(word: 'greatest' | 'least', args: readonly Scalar[], at:
 export function nullIf(left: Scalar, right: Scalar, at: number): Scalar {
   const value = clamped(settle(left, right.type))
   compare('=', value, right, at)
+  const beside = settle(right, value.type)
+  if (comparable(value, beside).some((side, i) => side !== [value, beside][i])) refuse('expr.unbounded', { expression: 'this value' }, at)
   return { ...apply('nullif', [value, settle(right, value.type)], value.type, { at, range: value.range, nullable: true }), carrier: value.carrier }
 }
 

@@ -8,6 +8,10 @@ import type { FormName } from './forms.ts'
 const two62 = Fraction.make(2n ** 62n)
 const two31 = Fraction.make(2n ** 31n)
 const half = Fraction.make(1n, 2n)
+const floatGrid = Fraction.make(1n, 10n ** 290n)
+const roundedUp = Fraction.make(10n ** 12n + 1n, 10n ** 12n)
+/** Bits of a bound's numerator and denominator: far below the digits at which numeric overflows or rounds a product, whatever the rows hold. */
+const boundBits = 4000n
 
 function largest(range: Range): Fraction {
   const low = range.low.isLess(Fraction.zero) ? range.low.neg() : range.low
@@ -62,6 +66,7 @@ function isInteger(scalar: Scalar): boolean {
 
 /** An operation on numbers: its operands brought to a type in which the proved result fits. */
 function compute(form: FormName, args: readonly Scalar[], type: ScalarType, range: Range, at: number, words: readonly string[] = []): Scalar {
+  for (const end of [range.low, range.high, range.step ?? Fraction.zero]) if (end.n >> boundBits > 1n || end.n >> boundBits < -1n || end.d >> boundBits > 0n) refuse('expr.unbounded', { expression: 'this value' }, at)
   const size = args.reduce((most, arg) => most.max(largest(rangeOf(arg))), largest(range))
   if (type.family === 'integer' && args.every(isInteger)) {
     const narrow = type.name !== 'int2' && size.isLess(two31) && args.every(arg => arg.carrier === 'own' && arg.type.name !== 'int2')
@@ -87,7 +92,9 @@ export function arithmetic(sign: '+' | '-' | '*' | '/' | '%', left: Scalar, righ
     }
     case '/': {
       const least = smallest(b, right)
-      const size = largest(a).div(least)
+      const quotient = largest(a).div(least)
+      // numeric division rounds, to 16 significant digits at the least: just below a half it may give the half
+      const size = type.family === 'integer' ? quotient : quotient.mul(roundedUp)
       if (type.family === 'integer') {
         const whole = Fraction.make(size.floor())
         const low = a.low.isLess(Fraction.zero) || b.low.isLess(Fraction.zero) ? whole.neg() : Fraction.zero
@@ -163,10 +170,29 @@ export function castNumber(arg: Scalar, to: ScalarType, at: number): Scalar {
   return { ...asNumeric(arg), type: to, carrier: 'numeric', at }
 }
 
-/** Two numbers brought together for a comparison: a raw numeric against a float could overflow in the cast, so it must carry a range. */
+/** Two numbers brought together for a comparison: what prints as numeric beside a float is cast to one, which must neither overflow nor vanish. */
 export function comparable(left: Scalar, right: Scalar): readonly [Scalar, Scalar] {
   if (!isNumber(left.type) || !isNumber(right.type)) return [left, right]
-  const mixed = left.type.family !== right.type.family && (left.type.family === 'float' || right.type.family === 'float')
-  if (mixed) for (const side of [left, right]) if (side.type.family === 'numeric' && !isFixed(side)) rangeOf(side)
-  return [left, right]
+  const [a, b] = [printsAs(left), printsAs(right)]
+  return a !== b && (a === 'float' || b === 'float') ? [besideFloat(left), besideFloat(right)] : [left, right]
+}
+
+/** Cut to 290 places where no grid is proved: what is left of a tiny value is zero, and zero is cast without complaint. */
+function besideFloat(side: Scalar): Scalar {
+  if (printsAs(side) !== 'numeric' || isFixed(side)) return side
+  const gridded = rangeOf(side).step === null ? { ...apply('round', [side], side.type, { range: { ...rangeOf(side), step: floatGrid }, at: side.at, words: ['290'] }), carrier: side.carrier } : side
+  fitsFloat(gridded, 'float8')
+  return gridded
+}
+
+function printsAs(scalar: Scalar): 'integer' | 'numeric' | 'float' {
+  if (scalar.carrier !== 'own') return scalar.carrier === 'numeric' ? 'numeric' : 'integer'
+  return scalar.type.family === 'float' ? 'float' : scalar.type.family === 'numeric' ? 'numeric' : 'integer'
+}
+
+/** Refuses a numeric whose cast to the float could raise: a value too large for it, or one so small that it would be taken for zero. */
+export function fitsFloat(scalar: Scalar, to: 'float4' | 'float8'): void {
+  const edge = Fraction.make(10n ** (to === 'float4' ? 30n : 290n))
+  const { step } = rangeOf(scalar)
+  if (!largest(rangeOf(scalar)).isAtMost(edge) || step === null || (step.isPositive() && step.isLess(Fraction.one.div(edge)))) refuse('expr.unbounded', { expression: describe(scalar) }, scalar.at)
 }

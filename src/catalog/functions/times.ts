@@ -52,10 +52,22 @@ export function extract(field: string, value: Scalar, name: 'extract' | 'date_pa
   if (value.type.family === 'date' && (plain === 'hour' || plain === 'minute')) refuse('expr.unsupported', { what: `${name} of ${plain} from a date` }, at)
   const inside = bounded(value)
   const type = scalarType(name === 'extract' ? 'numeric' : 'float8')
-  const whole = (n: number): Fraction => Fraction.make(BigInt(n))
-  const proved = range ?? (plain === 'decade' ? ([-500, 30000] as const) : ([-5000, 300000] as const))
-  const scalar = apply('extract', [inside], type, { words: [plain, name], range: { low: whole(proved[0]), high: whole(proved[1]), step: Fraction.one }, at })
-  return scalar
+  const [low, high] = range === null ? yearsOf(inside) : [BigInt(range[0]), BigInt(range[1])]
+  const proved = range === null && plain === 'decade' ? { low: Fraction.make(low, 10n), high: Fraction.make(high, 10n) } : { low: Fraction.make(low), high: Fraction.make(high) }
+  return apply('extract', [inside], type, { words: [plain, name], range: { low: Fraction.make(proved.low.floor()), high: Fraction.make(proved.high.ceil()), step: Fraction.one }, at })
+}
+
+/** The years of any date that PostgreSQL has. */
+const allYears: readonly [bigint, bigint] = [-4714n, 5_874_898n]
+
+/** The years a date or time can lie in, a year more at either end for zones, weeks and truncation: of plain constants and clamps; of what is computed otherwise, all there are. */
+function yearsOf(scalar: Scalar): readonly [bigint, bigint] {
+  const node = scalar.node
+  const ends = node.kind === 'constant' ? [node.text, node.text] : node.kind === 'column' && node.clamped !== null ? [node.clamped.low, node.clamped.high] : []
+  const [low, high] = ends.map(end => /^\s*(\d{4,7})-\d\d?-\d\d?(?:[ T][\d:.+\-Z]*)?$/.exec(end ?? '')?.[1])
+  if (low !== undefined && high !== undefined) return [BigInt(low) - 1n, BigInt(high) + 1n]
+  const [arg] = node.kind === 'apply' && node.form === 'cast' ? node.args : []
+  return arg === undefined || !isDateOrTime(arg) ? allYears : yearsOf(arg)
 }
 
 /** A date or time moved by an interval, or a date by whole days. */
@@ -68,8 +80,10 @@ export function shift(sign: '+' | '-', value: Scalar, by: Scalar, at: number): S
 
 /** date - date, in days. */
 export function daysBetween(left: Scalar, right: Scalar, at: number): Scalar {
-  const most = Fraction.make(11_000_000n)
-  return apply('days-between', [bounded(left), bounded(right)], scalarType('int4'), { range: { low: most.neg(), high: most, step: Fraction.one }, at })
+  const [a, b] = [bounded(left), bounded(right)]
+  const [from, to] = [yearsOf(a), yearsOf(b)]
+  const days = (years: bigint): Fraction => Fraction.make(years * 366n).max(mostDays.neg()).min(mostDays)
+  return apply('days-between', [a, b], scalarType('int4'), { range: { low: days(from[0] - to[1]), high: days(from[1] + 1n - to[0]), step: Fraction.one }, at })
 }
 
 /** timestamp - timestamp, an interval. */
@@ -81,6 +95,8 @@ export function timeBetween(left: Scalar, right: Scalar, at: number): Scalar {
 export function castTime(value: Scalar, to: string, at: number): Scalar {
   return apply('cast', [bounded(value)], scalarType(to), { words: ['pg_catalog', to], at })
 }
+
+const mostDays = Fraction.make(2n ** 31n - 1n)
 
 const checkedAtTheEnds: ReadonlySet<string> = new Set(['shift', 'date-trunc', 'extract', 'cast', 'days-between', 'time-between'])
 
