@@ -14,6 +14,8 @@ export interface RowsTable {
   readonly name: string
   readonly columns: readonly string[]
   readonly query: Query
+  /** The common tables that its own query can name: those before it, never itself. */
+  readonly sees: ReadonlyMap<string, RowsTable>
 }
 
 /** What lowering a block works from. */

@@ -79,8 +79,9 @@ export function cutQuery(query: Query, names: Names, blocks: CutBlock[]): Query 
   if (isZero(query.limit)) return emptied(query, names)
   const inner = withNames(query, names)
   const tables = (query.with?.tables ?? []).flatMap((table): readonly CommonTable[] => {
-    if (yieldsRows(table.query, withNames({ ...query, with: before(query, table) }, names))) return []
-    return [{ ...table, query: cutQuery(table.query, inner, blocks) }]
+    const seen = withNames({ ...query, with: before(query, table) }, names)
+    if (yieldsRows(table.query, seen)) return []
+    return [{ ...table, query: cutQuery(table.query, query.with?.recursive === true ? inner : seen, blocks) }]
   })
   const kept = query.with === null || tables.length === 0 ? null : { ...query.with, tables }
   const outer: Query = { ...query, with: kept }

@@ -43,7 +43,7 @@ function lowerFrom(item: FromItem, context: Context): Lowered {
 function lowerTable(item: Extract<FromItem, { kind: 'table' }>, context: Context): Lowered {
   const bare = item.name.at(-1) ?? ''
   const common = item.name.length === 1 ? context.commonTables.get(bare) : undefined
-  if (common !== undefined) return lowerDerived(common.query, item.alias ?? { name: bare, columns: [] }, context, item.at, common.columns)
+  if (common !== undefined) return lowerDerived(common.query, item.alias ?? { name: bare, columns: [] }, { ...context, commonTables: common.sees }, item.at, common.columns)
   const table = findTable(context.dataSet, item.name)
   if (table === null) return refuse('block.mixed', { what: `"${item.name.join('.')}"` }, item.at)
   const scan: Scan = { index: context.scans.length, table, at: item.at }

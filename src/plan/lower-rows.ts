@@ -36,7 +36,7 @@ export function withTables(query: Query, context: Context, at: number): Context 
   if (query.with === null) return context
   if (query.with.recursive) refuse('block.shape', { what: 'WITH RECURSIVE' }, at)
   const tables = new Map<string, RowsTable>(context.commonTables)
-  for (const table of query.with.tables) tables.set(table.name, { name: table.name, columns: table.columns, query: table.query })
+  for (const table of query.with.tables) tables.set(table.name, { name: table.name, columns: table.columns, query: table.query, sees: new Map(tables) })
   return { ...context, commonTables: tables }
 }
 

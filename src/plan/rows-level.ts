@@ -35,7 +35,7 @@ export function readsRows(item: FromItem, names: Names): boolean {
       const bare = item.name.at(-1) ?? ''
       if (item.name.length === 1) {
         const rows = names.rows.get(bare)
-        if (rows !== undefined) return yieldsRows(rows.query, { ...names, rows: without(names.rows, bare) })
+        if (rows !== undefined) return yieldsRows(rows.query, { ...names, rows: rows.sees })
         if (names.finished.has(bare)) return false
       }
       return findTable(names.dataSet, item.name)?.kind === 'private'
@@ -59,7 +59,7 @@ export function withNames(query: Query, names: Names): Names {
   for (const table of query.with?.tables ?? []) {
     const rows = yieldsRows(table.query, inner) || isPlainRows(table.query, inner)
     inner = rows
-      ? { ...inner, rows: new Map([...inner.rows, [table.name, { name: table.name, columns: table.columns, query: table.query }]]), finished: new Set([...inner.finished].filter(name => name !== table.name)) }
+      ? { ...inner, rows: new Map([...inner.rows, [table.name, { name: table.name, columns: table.columns, query: table.query, sees: inner.rows }]]), finished: new Set([...inner.finished].filter(name => name !== table.name)) }
       : { ...inner, rows: without(inner.rows, table.name), finished: new Set([...inner.finished, table.name]) }
   }
   return inner

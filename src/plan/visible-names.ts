@@ -26,7 +26,7 @@ function namedItem(item: FromItem, dataSet: DataSet, common: ReadonlyMap<string,
     case 'table': {
       const bare = item.name.at(-1) ?? ''
       const rows = item.name.length === 1 ? common.get(bare) : undefined
-      if (rows !== undefined) return [aliased(item.alias, bare, rows.columns.length > 0 ? rows.columns : columnsOf(rows.query, dataSet, common), null)]
+      if (rows !== undefined) return [aliased(item.alias, bare, rows.columns.length > 0 ? rows.columns : columnsOf(rows.query, dataSet, rows.sees), null)]
       const table = findTable(dataSet, item.name)
       return [aliased(item.alias, bare, table === null ? [] : [...table.columns.keys()], table)]
     }
