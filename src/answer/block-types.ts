@@ -57,7 +57,7 @@ export function createDescriber(lobby: Lobby, parser: Parser): Describer {
     },
     complaint: async (dataSet, text, parameterTypes) => {
       const described = await lobby.describe(dataSet.name, text, parameterTypes)
-      return described.kind === 'complaint' && described.sqlstate.startsWith('42') && described.sqlstate !== '42501'
+      return described.kind === 'complaint' && /^(42|22|0A)/.test(described.sqlstate) && described.sqlstate !== '42501'
     },
   }
 }

@@ -27,12 +27,18 @@ export function privateTables(placed: Placed, dataSet: DataSet): readonly Privat
   })
 }
 
+/** The first relation of a CREATE TABLE is the one it makes; a schema before it, such as pg_temp, makes it no other name for those who read it bare. */
+function refuseShadow(placed: Placed, dataSet: DataSet): void {
+  const table = findTable(dataSet, placed.relations[0]?.slice(-1) ?? [])
+  if (table?.kind === 'private') refuse('rows.shadow', { table: table.name, example: exampleOf(dataSet, table) })
+}
+
 /** Refuses what would write to, lock or copy a private table, or hide its name behind a function; lets other commands go to PostgreSQL. */
 export function refuseClosed(placed: Placed, tables: readonly PrivateTable[], mentioned: boolean, dataSet: DataSet): void {
   if (placed.statement.kind !== 'other') return
   const { tag } = placed.statement
   const [table] = tables
-  if (tag === 'CreateStmt' && table !== undefined) refuse('rows.shadow', { table: table.name, example: exampleOf(dataSet, table) })
+  if (tag === 'CreateStmt') refuseShadow(placed, dataSet)
   const what = closed[tag]
   if (what === undefined) return
   const body = tag === 'CreateFunctionStmt' || tag === 'DoStmt'

@@ -65,6 +65,8 @@ async function judge(request: GateRequest, dataSet: DataSet, mentions: Mention, 
     return { kind: 'rewritten', text: refused(problem), refusals }
   }
   if (outcome.kind === 'syntax-error') return { kind: 'untouched' }
+  if (!request.standardConformingStrings && /\\|U&'/i.test(request.text) && outcome.statements.some(placed => privateTables(placed, dataSet).length > 0))
+    return { kind: 'rewritten', text: refused(new Refusal('text.backslash', {}, -1)), refusals }
   const bytes = Buffer.from(request.text, 'utf8')
   const pieces: string[] = []
   let at = 0

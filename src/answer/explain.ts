@@ -34,7 +34,7 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
   const settings = readSessionSettings(request.settings, dataSet)
   const outcome = await parts.parser.readText(request.text)
   const placed = outcome.kind === 'read' ? outcome.statements[0] : undefined
-  if (placed === undefined || placed.refusal !== null || placed.statement.kind !== 'explain') return refuse('block.shape', { what: 'EXPLAIN of anything but one statement that can be read', example: '' })
+  if (placed === undefined || placed.refusal !== null || placed.statement.kind !== 'explain') return refuse('block.shape', { what: 'EXPLAIN of anything but one statement that can be read' })
   const cut = cutStatement(placed.statement.statement, dataSet)
   const [balance] = await parts.ledger.balances([accounts.analyst])
   const explained: Explained[] = []

@@ -35,6 +35,12 @@ export const refusals = {
     hint: 'Leave it out, or apply it to the finished result: SELECT answer.* FROM ({example}) AS answer',
     why: 'what is not understood in full is not answered',
   },
+  'text.backslash': {
+    sqlstate: '42601',
+    message: 'a statement over private tables with a backslash in it cannot be read while standard_conforming_strings is off',
+    hint: 'SET standard_conforming_strings = on, and write E\'…\' where a backslash is to escape',
+    why: 'one text with two readings must not be guessed at',
+  },
   'rows.private': {
     sqlstate: '42501',
     message: 'rows of "{table}" are about persons and are not shown',
