@@ -26,9 +26,9 @@ export function readSessionSettings(raw: Readonly<Record<string, string>>, dataS
   unset('margin', 'no value yet: set hedgerow.epsilon and read the margin in EXPLAIN')
   if (text('replay') !== '' && text('replay') !== 'off') refuse('setting.bad', { name: 'replay', value: text('replay'), expected: "only off: every release is drawn anew", sample: 'off' })
   return {
-    epsilon: positive('epsilon', text('epsilon') || dataSet.defaults.epsilon, 'a number greater than 0', '0.1'),
-    delta: share('delta', text('delta') || dataSet.defaults.delta, 'a number from 0 to below 1', '1e-8'),
-    confidence: share('confidence', text('confidence') || '0.95', 'a number from 0 to below 1', '0.95'),
+    epsilon: positive('epsilon', text('epsilon') || dataSet.defaults.epsilon, 'a number from 1e-9 to 1e40', '0.1'),
+    delta: share('delta', text('delta') || dataSet.defaults.delta, '0, or a number from 1e-30 to below 1', '1e-8'),
+    confidence: share('confidence', text('confidence') || '0.95', 'a number from 0 to 0.999999999999', '0.95'),
     noise: wish(text('noise')),
     limits: { groups: limit('groups', text('groups')), rows: limit('rows', text('rows')) },
     nonnegative: flag('nonnegative', text('nonnegative')),
@@ -43,14 +43,19 @@ function parsed(name: string, value: string, expected: string, sample: string): 
   }
 }
 
+/** Beyond these nothing is gained, and the exact arithmetic of noise and margins would hold up everybody. */
+const [leastEpsilon, mostEpsilon] = [Fraction.parse('1e-9'), Fraction.parse('1e40')]
+const [leastShare, mostConfidence] = [Fraction.parse('1e-30'), Fraction.parse('0.999999999999')]
+
 function positive(name: string, value: string, expected: string, sample: string): Fraction {
   const number = parsed(name, value, expected, sample)
-  return number.isPositive() ? number : refuse('setting.bad', { name, value, expected, sample })
+  return leastEpsilon.isAtMost(number) && number.isAtMost(mostEpsilon) ? number : refuse('setting.bad', { name, value, expected, sample })
 }
 
 function share(name: string, value: string, expected: string, sample: string): Fraction {
   const number = parsed(name, value, expected, sample)
-  return number.isLess(Fraction.zero) || !number.isLess(Fraction.one) ? refuse('setting.bad', { name, value, expected, sample }) : number
+  const inside = number.isZero() || (leastShare.isAtMost(number) && (name === 'confidence' ? number.isAtMost(mostConfidence) : number.isLess(Fraction.one)))
+  return inside ? number : refuse('setting.bad', { name, value, expected, sample })
 }
 
 function wish(value: string): Wish {

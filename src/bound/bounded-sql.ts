@@ -1,11 +1,10 @@
 import { call, cast, column, extreme, integer, isNull, logic, numeric, operator, when, text } from '../catalog/build.ts'
-import { scansOf } from '../catalog/scalar.ts'
 import { paddedScans } from '../plan/relation.ts'
 import type { ReleasePlan, Total, Units } from '../plan/release-plan.ts'
 import type { Expr, FromItem, GroupItem, Query, Target } from '../sql/tree.ts'
 import { pickOrder } from './pick-order.ts'
 import { type FixedValues, printKey, printScalar, scanName } from './print-scalar.ts'
-import { allOf, paddedIn, plainFrame, printSource, readColumns, selectQuery, subquery, target } from './print-source.ts'
+import { allOf, plainFrame, printSource, readColumns, selectQuery, subquery, target } from './print-source.ts'
 
 function positions(count: number): readonly GroupItem[] {
   return Array.from({ length: count }, (_, i) => ({ kind: 'expression', value: integer(BigInt(i + 1)) }))
@@ -47,16 +46,14 @@ interface Relation {
 }
 
 function relation(plan: ReleasePlan, fixed: FixedValues): Relation {
-  // before the join a test may run only where no padding can arise: WHERE x IS NULL means the unmatched rows, not the NULLs among the joined ones
-  const padded = paddedScans(plan.owned.source)
-  const everywhere = plan.owned.source.kind === 'filter' ? plan.owned.source.tests.filter(test => [...scansOf(test)].every(scan => !padded.has(scan))) : []
+  const everywhere = plan.owned.source.kind === 'filter' ? plan.owned.source.tests : []
   const printed = printSource(plan.owned.source, {
     fixed,
     read: readColumns(plan),
     capped: plan.fanOut.capped,
     counted: plan.fanOut.counted,
     everywhere,
-    padded: paddedIn(plan.owned.source),
+    padded: paddedScans(plan.owned.source),
   })
   const person = column(scanName(plan.owned.person.scan), plan.owned.person.column)
   const tests = [...printed.tests.map((test) => printScalar(test, fixed)), ...listedOnly(plan, fixed), isNull(person, true)]

@@ -1,5 +1,5 @@
 import { unreachable } from '../base/check.ts'
-import { call, cast, column, isNull, nothing, text } from '../catalog/build.ts'
+import { call, cast, column, integer, isNull, nothing, text } from '../catalog/build.ts'
 import type { Scalar } from '../catalog/scalar.ts'
 import type { ListFactor, ReleasePlan } from '../plan/release-plan.ts'
 import type { Source } from '../plan/relation.ts'
@@ -92,17 +92,11 @@ function literal(type: Scalar['type'], entry: string | null): Scalar {
   return { type, node: { kind: 'constant', text: entry }, nullable: entry === null, range: null, carrier: 'own', at: -1 }
 }
 
+/** More than any list may have, even where a few steps fall on one value: a clamp of years by the microsecond is not worked off. */
+const longestSeries = 25_000n
+
 function series(args: readonly Expr[]): FromItem {
-  return {
-    kind: 'function',
-    functions: [{ call: call('generate_series', args), definitions: [] }],
-    rowsFrom: false,
-    lateral: false,
-    ordinality: false,
-    alias: { name: 'v', columns: ['v'] },
-    definitions: [],
-    at: -1,
-  }
+  return subquery({ ...selectQuery({ targets: [target(call('generate_series', args), 'v')], from: [] }), limit: integer(longestSeries) }, 'v')
 }
 
 function distinct(targets: readonly Target[], from: FromItem, tests: readonly Expr[]): Query {

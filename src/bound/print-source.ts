@@ -2,7 +2,7 @@ import { cast, call, column, constant, integer, logic, operator } from '../catal
 import { parts, scansOf, type Scalar } from '../catalog/scalar.ts'
 import { listedRows } from '../plan/fan-out.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
-import { indexesIn, type Scan, type Source } from '../plan/relation.ts'
+import type { Scan, Source } from '../plan/relation.ts'
 import type { Expr, FromItem, Query, Select, Target } from '../sql/tree.ts'
 import { type FixedValues, printOwn, printScalar, scanName } from './print-scalar.ts'
 
@@ -87,18 +87,6 @@ export interface SourceContext {
   readonly padded: ReadonlySet<number>
 }
 
-/** Scans on the right of some LEFT JOIN. */
-export function paddedIn(source: Source): ReadonlySet<number> {
-  switch (source.kind) {
-    case 'scan':
-      return new Set()
-    case 'filter':
-      return paddedIn(source.input)
-    case 'join':
-      return new Set([...paddedIn(source.left), ...(source.type === 'left' ? indexesIn(source.right) : paddedIn(source.right))])
-  }
-}
-
 /** FROM as SQL, and the conditions left for WHERE. A filter below the padded side of a LEFT JOIN moves into its ON, which means the same. */
 export function printSource(source: Source, context: SourceContext): PrintedSource {
   switch (source.kind) {
@@ -172,17 +160,12 @@ export const plainFrame = { options: 1058, start: null, end: null } as const
 function printListed(table: Extract<Scan['table'], { kind: 'listed' }>, alias: string, context: SourceContext): FromItem {
   const columns = [...table.columns.keys()]
   if (table.source.kind === 'series') {
-    const args = table.source.args.map((arg) => printOwn(arg, context.fixed))
-    return {
-      kind: 'function',
-      functions: [{ call: call('generate_series', args), definitions: [] }],
-      rowsFrom: false,
-      lateral: false,
-      ordinality: false,
-      alias: { name: alias, columns },
-      definitions: [],
-      at: -1,
-    }
+    // in a SELECT list its rows come one by one, in FROM PostgreSQL would make all of them first
+    const series = call(
+      'generate_series',
+      table.source.args.map((arg) => printOwn(arg, context.fixed)),
+    )
+    return subquery(selectQuery({ targets: [target(series, columns[0] ?? 'v')], from: [] }), alias, columns)
   }
   const types = [...table.columns.values()].map((each) => each.type)
   const rows = table.source.rows.map((row) => row.map((value, i) => cast(printOwn(value, context.fixed), types[i]?.name ?? 'text', types[i]?.schema)))
