@@ -41,9 +41,11 @@ export function operator(left: Expr | null, name: string, right: Expr): Expr {
   return { kind: 'operator', name: [name], left, right, at: -1 }
 }
 
+/** A chain of AND or OR, nested ones taken in, as PostgreSQL's grammar does on sight. */
 export function logic(word: 'and' | 'or', args: readonly Expr[]): Expr {
-  const [first] = args
-  return args.length === 1 && first !== undefined ? first : { kind: 'logic', word, args, at: -1 }
+  const flat = args.flatMap(arg => (arg.kind === 'logic' && arg.word === word ? arg.args : [arg]))
+  const [first] = flat
+  return flat.length === 1 && first !== undefined ? first : { kind: 'logic', word, args: flat, at: -1 }
 }
 
 export function isNull(arg: Expr, negated = false): Expr {
