@@ -1,4 +1,4 @@
-import { atEnd } from '../catalog/functions/times.ts'
+import { atEnd, isBetweenEnds } from '../catalog/functions/times.ts'
 import { isClamped } from '../catalog/functions/clamped.ts'
 import type { Scalar } from '../catalog/scalar.ts'
 import type { DataColumn } from '../policy/data-set.ts'
@@ -15,7 +15,7 @@ export function domainOf(scalar: Scalar, key: number, scans: readonly Scan[]): L
     const from = column?.valuesFrom ?? null
     return from === null ? null : { kind: 'column', key, table: from.table, column: from.column, nullable: scalar.nullable }
   }
-  if (node.kind === 'apply' && (node.form === 'date-trunc' || node.form === 'extract') && isClamped(scalar)) return steps(scalar, node, key)
+  if (node.kind === 'apply' && (node.form === 'date-trunc' || node.form === 'extract') && isClamped(scalar) && isBetweenEnds(scalar)) return steps(scalar, node, key)
   return null
 }
 

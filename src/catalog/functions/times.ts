@@ -101,16 +101,46 @@ const mostDays = Fraction.make(2n ** 31n - 1n)
 const checkedAtTheEnds: ReadonlySet<string> = new Set(['shift', 'date-trunc', 'extract', 'cast', 'days-between', 'time-between'])
 
 /**
- * What must be computed in the lobby before anything is debited, so that no row can make the vault raise: every operation on dates and times at both ends of
- * its clamps (they are monotone in between).
+ * What must be computed in the lobby before anything is debited, so that no row can make the vault raise: every operation on dates and times at every
+ * combination of the ends of its clamps and of what a CASE or coalesce may put in their place (they are monotone in between).
  */
 export function* endsOf(scalar: Scalar): Generator<Scalar> {
   for (const part of parts(scalar)) {
     if (part.node.kind !== 'apply' || !checkedAtTheEnds.has(part.node.form) || isFixed(part)) continue
-    if (!part.node.args.some(isDateOrTime)) continue
-    yield atEnd(part, 'low')
-    yield atEnd(part, 'high')
+    if (part.node.args.some(isDateOrTime) && isClamped(part)) yield* corners(part)
   }
+}
+
+const cornerCeiling = 64
+
+/** Column-free scalars between which every value of `scalar` lies. */
+function corners(scalar: Scalar): readonly Scalar[] {
+  const node = scalar.node
+  if (node.kind === 'column') return [atEnd(scalar, 'low'), atEnd(scalar, 'high')]
+  if (node.kind !== 'apply' || isFixed(scalar)) return [scalar]
+  switch (node.form) {
+    case 'case':
+      return node.args.filter((_, i) => i % 2 === 1 || i === node.args.length - 1).flatMap(corners)
+    case 'coalesce':
+    case 'greatest':
+    case 'least':
+      return node.args.flatMap(corners)
+    case 'nullif':
+      return node.args.slice(0, 1).flatMap(corners)
+    default: {
+      const combined = node.args.reduce<readonly (readonly Scalar[])[]>((rows, arg) => rows.flatMap(row => corners(arg).map(corner => [...row, corner])), [[]])
+      if (combined.length > cornerCeiling) refuse('expr.unsupported', { what: 'a date or time with so many branches' }, scalar.at)
+      return combined.map(args => ({ ...scalar, node: { ...node, args } }))
+    }
+  }
+}
+
+const rising: ReadonlySet<string> = new Set(['shift', 'date-trunc', 'extract', 'cast'])
+
+/** Whether the value lies between what it is at the low and at the high ends of its clamps, both finite: not so where values are chosen between. */
+export function isBetweenEnds(scalar: Scalar): boolean {
+  for (const part of parts(scalar)) if (part.node.kind === 'apply' && !isFixed(part) && !rising.has(part.node.form)) return false
+  return true
 }
 
 /** The scalar with every clamped column at that end of its clamp. */
