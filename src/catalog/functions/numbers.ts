@@ -1,6 +1,6 @@
 import { Fraction } from '../../base/fraction.ts'
 import { refuse } from '../../base/refusal.ts'
-import { isFixed, type Range, type Scalar } from '../scalar.ts'
+import type { Range, Scalar } from '../scalar.ts'
 import { isNumber, promote, scalarType, type ScalarType } from '../scalar-type.ts'
 import { apply } from './apply.ts'
 import type { FormName } from './forms.ts'
@@ -53,6 +53,12 @@ function cast(arg: Scalar, to: 'int8' | 'numeric'): Scalar {
 export function asNumeric(arg: Scalar): Scalar {
   if (arg.carrier === 'numeric' || (arg.carrier === 'own' && arg.type.family === 'numeric')) return arg
   return cast(arg, 'numeric')
+}
+
+/** The value in numeric, standing for one of another type; a column keeps its own type below, by which its clamp is printed. */
+function standing(arg: Scalar, type: ScalarType, carrier: Scalar['carrier'], at: number): Scalar {
+  const exact = asNumeric(arg)
+  return { ...(exact.node.kind === 'column' ? cast(exact, 'numeric') : exact), type, carrier, at }
 }
 
 function asInt8(arg: Scalar): Scalar {
@@ -161,13 +167,13 @@ export function castNumber(arg: Scalar, to: ScalarType, at: number): Scalar {
   }
   if (to.family === 'numeric') {
     if (arg.type.family === 'float') rangeOf(arg)
-    return { ...asNumeric(arg), type: to, carrier: 'own', at }
+    return standing(arg, to, 'own', at)
   }
   // to a float: exact numbers with a proved range, kept in numeric so that sums stay exact
   if (arg.type.family === 'float' && arg.carrier === 'own' && arg.range === null) return apply('cast', [arg], to.name === 'float8' ? to : refuse('expr.unsupported', { what: 'a cast to real' }, at), { words: ['pg_catalog', 'float8'], range: null, at })
   if (arg.type.family === 'integer' && arg.range === null) return apply('cast', [arg], to, { words: ['pg_catalog', to.name], range: null, at })
   rangeOf(arg)
-  return { ...asNumeric(arg), type: to, carrier: 'numeric', at }
+  return standing(arg, to, 'numeric', at)
 }
 
 /** Two numbers brought together for a comparison: what prints as numeric beside a float is cast to one, which must neither overflow nor vanish. */
@@ -179,7 +185,9 @@ export function comparable(left: Scalar, right: Scalar): readonly [Scalar, Scala
 
 /** Cut to 290 places where no grid is proved: what is left of a tiny value is zero, and zero is cast without complaint. */
 function besideFloat(side: Scalar): Scalar {
-  if (printsAs(side) !== 'numeric' || isFixed(side)) return side
+  if (printsAs(side) !== 'numeric') return side
+  // NaN and the infinities have no range and fit; any other value of the statement's own is held to the same edges, since the vault casts it
+  if (side.node.kind === 'constant' && (side.node.text === null || !/\d/.test(side.node.text))) return side
   const gridded = rangeOf(side).step === null ? { ...apply('round', [side], side.type, { range: { ...rangeOf(side), step: floatGrid }, at: side.at, words: ['290'] }), carrier: side.carrier } : side
   fitsFloat(gridded, 'float8')
   return gridded
