@@ -1,6 +1,6 @@
 import { refuse } from '../../base/refusal.ts'
 import type { Scalar } from '../scalar.ts'
-import { isNumber, sameType, scalarType, type ScalarType } from '../scalar-type.ts'
+import { isNumber, promote, sameType, scalarType, type ScalarType } from '../scalar-type.ts'
 import { apply } from './apply.ts'
 import { comparable } from './numbers.ts'
 
@@ -22,9 +22,11 @@ export function settle(scalar: Scalar, type: ScalarType): Scalar {
   return { ...scalar, type: settled, carrier: 'own' }
 }
 
-/** The type that several values share, as in CASE, coalesce, IN: the first known one, numbers promoted by the caller. */
+/** The type that several values share, as in CASE, coalesce, IN: the widest of numbers, else the first known one. A bare string is read as it. */
 export function commonType(scalars: readonly Scalar[]): ScalarType {
-  return scalars.find(scalar => scalar.type.family !== 'unknown')?.type ?? scalarType('text')
+  const known = scalars.map(scalar => scalar.type).filter(type => type.family !== 'unknown')
+  if (known.length > 0 && known.every(isNumber)) return known.reduce(promote)
+  return known[0] ?? scalarType('text')
 }
 
 /** a = b and its kin, also IS [NOT] DISTINCT FROM. */
@@ -37,8 +39,12 @@ export function compare(form: '=' | '<>' | '<' | '<=' | '>' | '>=' | 'distinct' 
 
 /** a IN (…) over a list of the statement's own values or of the same row's. */
 export function inList(arg: Scalar, list: readonly Scalar[], negated: boolean, at: number): Scalar {
-  const settled = settle(arg, commonType(list))
-  const entries = list.map(entry => settle(entry, settled.type))
+  const type = commonType([arg, ...list])
+  const settled = settle(arg, type)
+  const entries = list.map(entry => settle(entry, type))
+  // PostgreSQL brings a list to one type: a date among instants can overflow there
+  const odd = entries.find(entry => instants.has(entry.type.family) && entry.type.family !== settled.type.family)
+  if (odd !== undefined) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${odd.type.name}` }, odd.at)
   for (const entry of entries) if (!match(settled.type, entry.type)) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${entry.type.name}` }, entry.at)
   const pairs = entries.map(entry => comparable(settled, entry))
   const subject = pairs.map(([left]) => left).find(left => left !== settled) ?? settled
