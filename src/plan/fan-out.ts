@@ -1,4 +1,6 @@
 import { refuse } from '../base/refusal.ts'
+import type { Scalar } from '../catalog/scalar.ts'
+import { isNumber } from '../catalog/scalar-type.ts'
 import type { Owned } from './owned.ts'
 import { type ColumnRef, type Scan, scansIn } from './relation.ts'
 
@@ -49,12 +51,28 @@ function close(owned: Owned, known: ReadonlySet<number>, scans: readonly Scan[],
 
 function uniqueKeysOf(scan: Scan): readonly (readonly string[])[] {
   if (scan.table.kind !== 'listed') return scan.table.uniqueKeys
-  if (scan.table.source.kind === 'series') return [[...scan.table.columns.keys()]]
-  const first = scan.table.source.rows.map(row => row[0]?.node)
-  const texts = first.map(node => (node?.kind === 'constant' ? node.text : null))
-  const distinct = texts.every(text => text !== null) && new Set(texts).size === texts.length
   const [column] = scan.table.columns.keys()
-  return distinct && column !== undefined ? [[column]] : []
+  if (column === undefined) return []
+  const source = scan.table.source
+  return (source.kind === 'series' ? isRising(source.args) : isDistinct(source.rows.map(row => row[0]))) ? [[column]] : []
+}
+
+/** Whether a series has no value twice: by whole numbers, or by a length of time of one unit (1 month - 30 days can turn back). */
+function isRising(args: readonly Scalar[]): boolean {
+  const step = args[2]
+  if (args.every(arg => arg.type.family === 'integer')) return true
+  return step?.node.kind === 'constant' && /^\s*[1-9]\d{0,5} *(second|minute|hour|day|week|mon|month|year)s?\s*$/i.test(step.node.text ?? '')
+}
+
+/** Whether values of a list differ for certain: 1 and 1.0 are two texts of one number. */
+function isDistinct(values: readonly (Scalar | undefined)[]): boolean {
+  const forms = values.map((value): string | null => {
+    if (value?.node.kind !== 'constant' || value.node.text === null) return null
+    if (value.type.name === 'text' || value.type.name === 'varchar') return value.node.text
+    const range = isNumber(value.type) && value.type.family !== 'float' ? value.range : null
+    return range === null ? null : range.low.toString()
+  })
+  return forms.every(form => form !== null) && new Set(forms).size === forms.length
 }
 
 /** How a person's rows can multiply in the joins, and what keeps that within a static ceiling. */
