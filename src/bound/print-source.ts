@@ -3,6 +3,7 @@ import { parts, scansOf, type Scalar } from '../catalog/scalar.ts'
 import { listedRows } from '../plan/fan-out.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import type { Scan, Source } from '../plan/relation.ts'
+import type { DataColumn } from '../policy/data-set.ts'
 import type { Expr, FromItem, Query, Select, Target } from '../sql/tree.ts'
 import { type FixedValues, printOwn, printScalar, scanName } from './print-scalar.ts'
 
@@ -137,7 +138,9 @@ function printCapped(scan: Scan, plain: FromItem, columns: readonly string[], ca
       name: '',
       refers: '',
       partition: [column(alias, owner)],
-      order: columns.map((name) => ({ by: column(alias, name), direction: 'default', using: [], nulls: 'default' })),
+      order: columns
+        .flatMap((name) => totalOrder(column(alias, name), scan.table.columns.get(name)))
+        .map((by) => ({ by, direction: 'default', using: [], nulls: 'default' })),
       frame: plainFrame,
     },
   })
@@ -152,6 +155,23 @@ function printCapped(scan: Scan, plain: FromItem, columns: readonly string[], ca
     where: operator(column('ranked', 'place'), '<=', integer(cap)),
   })
   return subquery(kept, alias)
+}
+
+/** What orders a column's values so that those that tie are alike in every respect: 1.0 and 1.00, 0 and -0, a month and 30 days are equal, and print apart. */
+function totalOrder(value: Expr, of: DataColumn | undefined): readonly Expr[] {
+  if (of === undefined || of.type.kind !== 'base') return [value]
+  if (!of.deterministic) return [value, { kind: 'collate', arg: value, collation: ['pg_catalog', 'C'], at: -1 }]
+  switch (of.type.name) {
+    case 'numeric':
+    case 'float4':
+    case 'float8':
+    case 'interval':
+      return [value, cast(value, 'text')]
+    case 'bpchar':
+      return [value, call('octet_length', [value])]
+    default:
+      return [value]
+  }
 }
 
 /** FRAMEOPTION_DEFAULTS of PostgreSQL: RANGE UNBOUNDED PRECEDING AND CURRENT ROW, not written out. */

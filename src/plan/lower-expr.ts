@@ -4,7 +4,7 @@ import { castTo } from '../catalog/functions/casts.ts'
 import { compare, inList, settle } from '../catalog/functions/comparisons.ts'
 import { and, choose, coalesce, extreme, isBoolean, isNull, not, nullIf, or, truth } from '../catalog/functions/conditions.ts'
 import { like } from '../catalog/functions/texts.ts'
-import type { Scalar } from '../catalog/scalar.ts'
+import { parts, type Scalar } from '../catalog/scalar.ts'
 import { scalarType } from '../catalog/scalar-type.ts'
 import type { Expr } from '../sql/tree.ts'
 import type { Context } from './context.ts'
@@ -59,7 +59,7 @@ export function lowerExpr(expr: Expr, scope: Scope, context: Context): Scalar {
     }
     case 'like':
       if (expr.word === 'similar') refuse('expr.unsupported', { what: 'SIMILAR TO' }, expr.at)
-      return like(expr.word, lower(expr.arg), lower(expr.pattern), expr.negated, expr.at)
+      return like(expr.word, deterministic(lower(expr.arg), context, expr.at), lower(expr.pattern), expr.negated, expr.at)
     case 'quantified': {
       if (expr.right.kind !== 'array' || expr.all || expr.name.at(-1) !== '=') refuse('expr.unsupported', { what: 'this form of ANY or ALL' }, expr.at)
       return inList(lower(expr.left), expr.right.items.map(lower), false, expr.at)
@@ -98,6 +98,16 @@ export function lowerExpr(expr: Expr, scope: Scope, context: Context): Scalar {
     default:
       return unreachable(expr)
   }
+}
+
+/** PostgreSQL raises where it meets a row whose collation has no patterns. */
+function deterministic(scalar: Scalar, context: Context, at: number): Scalar {
+  for (const part of parts(scalar)) {
+    if (part.node.kind !== 'column') continue
+    const { scan, column } = part.node
+    if (context.scans.find(each => each.index === scan)?.table.columns.get(column)?.deterministic === false) refuse('expr.unsupported', { what: 'LIKE under a nondeterministic collation' }, at)
+  }
+  return scalar
 }
 
 /** A condition; a bare NULL or string is boolean there. */
