@@ -17,6 +17,8 @@ export interface CatalogColumn {
   readonly notNull: boolean
   /** False for a text column under a nondeterministic collation. */
   readonly deterministic: boolean
+  /** The collation of a text column, as schema.name; null or absent for the database's own. */
+  readonly collation?: string | null
 }
 
 export interface ForeignKey {

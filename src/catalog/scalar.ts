@@ -29,13 +29,19 @@ export interface Range {
 
 export type ScalarNode =
   /** `clamped`: the clamp it is printed with; `offers`: the clamp the policy declares, taken on wherever a bound is needed. */
-  | { readonly kind: 'column'; readonly scan: number; readonly column: string; readonly clamped: Clamp | null; readonly offers: Clamp | null }
+  | { readonly kind: 'column'; readonly scan: number; readonly column: string; readonly clamped: Clamp | null; readonly offers: Clamp | null; readonly collation?: Collation }
   /** A text in the type's input form; null: NULL. */
   | { readonly kind: 'constant'; readonly text: string | null }
   /** A parameter of the block, 1-based; its value is bound as text. */
   | { readonly kind: 'parameter'; readonly number: number }
   /** A row of the table of functions over arguments; `words` are constants that are part of the row's form (a unit, a field). */
   | { readonly kind: 'apply'; readonly form: string; readonly args: readonly Scalar[]; readonly words: readonly string[] }
+
+/** A text column's own collation, where it is not the database's. */
+export interface Collation {
+  readonly name: string
+  readonly deterministic: boolean
+}
 
 export interface Clamp {
   /** Literals of the column's type. */

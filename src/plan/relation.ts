@@ -80,7 +80,7 @@ export function equated(test: Scalar): readonly [ColumnRef, ColumnRef] | null {
   if (test.node.kind !== 'apply' || test.node.form !== '=') return null
   const [a, b] = test.node.args
   if (a?.node.kind !== 'column' || b?.node.kind !== 'column' || a.node.clamped !== null || b.node.clamped !== null) return null
-  if (!equalAlike(a.type, b.type)) return null
+  if (!equalAlike(a.type, b.type) || a.node.collation?.deterministic === false || b.node.collation?.deterministic === false) return null
   return [
     { scan: a.node.scan, column: a.node.column },
     { scan: b.node.scan, column: b.node.column },

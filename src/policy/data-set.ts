@@ -64,6 +64,8 @@ export interface DataColumn {
   readonly type: CatalogType
   readonly notNull: boolean
   readonly deterministic: boolean
+  /** The collation of a text column where it is not the database's own. */
+  readonly collation?: string | null
   /** 'linking': the person's key, `by` and `through` columns: in the shell, usable in joins, refused in output. */
   readonly role: 'listed' | 'linking'
   /** Literals of the column's type. */

@@ -29,6 +29,7 @@ export function plainColumn(column: CatalogColumn, role: DataColumn['role']): Da
     type: column.type,
     notNull: column.notNull,
     deterministic: column.deterministic,
+    collation: column.collation ?? null,
     role,
     clamp: null,
     step: null,

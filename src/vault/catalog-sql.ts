@@ -83,6 +83,8 @@ export const relationsSql = `
           'kind', case when t.typtype = 'e' then 'enum' when t.typtype = 'd' then 'domain' when t.typtype = 'b' and t.typcategory <> 'A' then 'base' else 'other' end,
           'labels', coalesce((select pg_catalog.json_agg(e.enumlabel order by e.enumsortorder) from pg_catalog.pg_enum e where e.enumtypid = t.oid), '[]'::pg_catalog.json)),
         'notNull', a.not_null,
+        'collation', (select ln.nspname || '.' || l.collname from pg_catalog.pg_collation l join pg_catalog.pg_namespace ln on ln.oid = l.collnamespace
+                       where l.oid = a.attcollation and l.collname <> 'default'),
         'deterministic', coalesce((select l.collisdeterministic from pg_catalog.pg_collation l where l.oid = a.attcollation), true)
       ) order by a.attnum)
       from attribute a

@@ -32,6 +32,7 @@ tables:
     bounds: { groups: 12, rows: 20 }
     columns:
       pier: { values_from: piers.pier_id }
+      trip_id: {}
       fare: { clamp: [0, 10], step: 1 }
       bundle: { clamp: [0, 10], step: 5 }
       boarded: { clamp: [2025-01-01, 2026-12-31] }
