@@ -1,4 +1,4 @@
-import pg from 'pg'
+import type pg from 'pg'
 import { afterAll, beforeAll, describe, expect, test } from 'vitest'
 import { ferries, ferryPolicy } from '../clients/ferries.ts'
 import type { TestHedgerow } from '../harness/hedgerow.ts'

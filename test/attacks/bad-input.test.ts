@@ -1,4 +1,4 @@
-import pg from 'pg'
+import type pg from 'pg'
 import { afterAll, beforeAll, describe, expect, test } from 'vitest'
 import { frame, int32 } from '../../src/wire/messages.ts'
 import { ferries } from '../clients/ferries.ts'
