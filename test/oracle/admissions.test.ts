@@ -18,7 +18,9 @@ const published: readonly (readonly [string, number, number, number, number])[] 
   ['F', 22, 351, 24, 317],
 ]
 
-const cells = published.flatMap(([department, ...counts]) => counts.map((count, i) => ({ department, sex: i < 2 ? 'men' : 'women', decision: i % 2 === 0 ? 'admitted' : 'rejected', count })))
+const cells = published.flatMap(([department, ...counts]) =>
+  counts.map((count, i) => ({ department, sex: i < 2 ? 'men' : 'women', decision: i % 2 === 0 ? 'admitted' : 'rejected', count })),
+)
 const applicants = cells.reduce((sum, cell) => sum + cell.count, 0)
 const question = 'SELECT department, sex, decision, count(*) FROM applicants GROUP BY department, sex, decision'
 const releases = caseCount(40)
@@ -26,7 +28,7 @@ const releases = caseCount(40)
 let server: TestHedgerow
 
 beforeAll(async () => {
-  const values = cells.map(cell => `('${cell.department}', '${cell.sex}', '${cell.decision}', ${cell.count.toString()})`).join(', ')
+  const values = cells.map((cell) => `('${cell.department}', '${cell.sex}', '${cell.decision}', ${cell.count.toString()})`).join(', ')
   server = await testHedgerow({
     vault: `CREATE TABLE applicants (applicant_id int PRIMARY KEY, department text NOT NULL, sex text NOT NULL, decision text NOT NULL);
             INSERT INTO applicants SELECT row_number() OVER (), d, s, a FROM (VALUES ${values}) AS v(d, s, a, n), generate_series(1, n);`,
@@ -44,14 +46,18 @@ tables:
       sex: { values: [men, women] }
       decision: { values: [admitted, rejected] }
 `,
-    analysts: { ana: '{ epsilon: 1e33, delta: 1e-6, renews: never }', bea: '{ epsilon: 1e6, delta: 1e-6, renews: never }', cy: '{ epsilon: 5, delta: 1e-6, renews: never }' },
+    analysts: {
+      ana: '{ epsilon: 1e33, delta: 1e-6, renews: never }',
+      bea: '{ epsilon: 1e6, delta: 1e-6, renews: never }',
+      cy: '{ epsilon: 5, delta: 1e-6, renews: never }',
+    },
     everyone: '{ epsilon: 1e34, delta: 1e-5 }',
   })
 })
 afterAll(() => server.stop())
 
 function exactCount(row: Readonly<Record<string, string>>): number {
-  return cells.find(cell => cell.department === row['department'] && cell.sex === row['sex'] && cell.decision === row['decision'])?.count ?? -1
+  return cells.find((cell) => cell.department === row['department'] && cell.sex === row['sex'] && cell.decision === row['decision'])?.count ?? -1
 }
 
 test('the published counts are 24 and add up to 4,526 applicants', () => {
@@ -92,13 +98,17 @@ async function errorsOf(client: pg.Client, law: string): Promise<readonly number
   return errors
 }
 
-test.concurrent.each(['auto', 'laplace', 'gaussian'])('by %s noise at epsilon 1 at least 95 in 100 counts lie within their stated margins of confidence 0.99', { timeout: 90_000 }, async law => {
-  const errors = await errorsOf(await server.connect('bea'), law)
-  expect(errors).toHaveLength(24 * releases)
-  const within = errors.filter(error => error <= 1).length
-  expect(within / errors.length).toBeGreaterThanOrEqual(0.95)
-  expect(errors.filter(error => error > 0.5).length / errors.length, 'the margin is no wider than the noise calls for').toBeGreaterThan(0.02)
-})
+test.concurrent.each(['auto', 'laplace', 'gaussian'])(
+  'by %s noise at epsilon 1 at least 95 in 100 counts lie within their stated margins of confidence 0.99',
+  { timeout: 90_000 },
+  async (law) => {
+    const errors = await errorsOf(await server.connect('bea'), law)
+    expect(errors).toHaveLength(24 * releases)
+    const within = errors.filter((error) => error <= 1).length
+    expect(within / errors.length).toBeGreaterThanOrEqual(0.95)
+    expect(errors.filter((error) => error > 0.5).length / errors.length, 'the margin is no wider than the noise calls for').toBeGreaterThan(0.02)
+  },
+)
 
 test('the margins are those of epsilon 1', async () => {
   const client = await server.connect('cy')
