@@ -159,9 +159,9 @@ test('a column or a table that the plan does not speak of is noticed by the seco
   expect(each).toBeDefined()
   const sql = each?.sql ?? ''
   expect(readBySecond(sql)).toEqual(each?.reads)
-  expect(readBySecond(sql.replaceAll('.fare_pence', '.note'))).not.toEqual(each?.reads)
+  expect(readBySecond(sql.replaceAll('.fare_pence', '.secret'))).not.toEqual(each?.reads)
   expect(readBySecond(sql.replaceAll('public.trips', 'public.riders'))).not.toEqual(each?.reads)
-  expect(readBySecond(`${sql} UNION ALL SELECT s0.note FROM public.trips AS s0`)).not.toEqual(each?.reads)
+  expect(readBySecond(`${sql} UNION ALL SELECT s0.secret FROM public.trips AS s0`)).not.toEqual(each?.reads)
 })
 
 function attempt(sql: string): readonly string[] | null {
