@@ -5,6 +5,7 @@ import { watchPolicies } from './files/watch-policies.ts'
 import { ensureDatabase } from './serve/databases.ts'
 import { type Hedgerow, PoliciesUnfit, startHedgerow } from './serve/hedgerow.ts'
 import { stateKey } from './serve/state-key.ts'
+import { onStopSignal } from './serve/stop-signal.ts'
 import { lineLog, systemClock, systemRandom } from './serve/system.ts'
 import { readSettings, SettingsError } from './settings.ts'
 
@@ -52,15 +53,10 @@ async function serve(): Promise<Hedgerow> {
   return hedgerow
 }
 
-let stopping = false
-for (const signal of ['SIGINT', 'SIGTERM'] as const) {
-  process.on(signal, () => {
-    if (stopping) process.exit(1)
-    stopping = true
-    log('info', 'serve.stopping', { signal })
-    void stop(0)
-  })
-}
+onStopSignal((signal) => {
+  log('info', 'serve.stopping', { signal })
+  void stop(0)
+})
 
 try {
   await serve()

@@ -7,6 +7,7 @@ import { startServer } from '../embedded/server.ts'
 import { ensureDatabase, withDatabase } from '../serve/databases.ts'
 import { startHedgerow } from '../serve/hedgerow.ts'
 import { stateKey } from '../serve/state-key.ts'
+import { onStopSignal } from '../serve/stop-signal.ts'
 import { lineLog, systemClock, systemRandom } from '../serve/system.ts'
 import { readSettings } from '../settings.ts'
 import { loadFerries } from './load-ferries.ts'
@@ -70,7 +71,7 @@ async function demo(): Promise<void> {
     tls: null,
     statementTimeoutMs: settings.statementTimeoutMs,
     key: await stateKey(directory),
-    log: lineLog(line => (line.includes('"level":"info"') ? undefined : void process.stderr.write(line))),
+    log: lineLog((line) => (line.includes('"level":"error"') ? void process.stderr.write(line) : undefined)),
     clock: systemClock,
     random: systemRandom,
     allowUnsafeLedger: true,
@@ -115,15 +116,10 @@ async function readerUrl(serverUrl: string, vaultUrl: string): Promise<string> {
   return url.href
 }
 
-let stopping = false
-for (const signal of ['SIGINT', 'SIGTERM'] as const) {
-  process.on(signal, () => {
-    if (stopping) process.exit(1)
-    stopping = true
-    say('\nstopping')
-    void stop(0)
-  })
-}
+onStopSignal(() => {
+  say('\nstopping')
+  void stop(0)
+})
 
 try {
   await demo()
