@@ -5,6 +5,7 @@ import { planBlock } from '../plan/block.ts'
 import { blockText, type BlockTypes, explainText, refusedText, rewritten } from '../plan/rewrite.ts'
 import { exampleFor, exampleOf } from '../plan/example.ts'
 import type { DataSet } from '../policy/data-set.ts'
+import { printStatement } from '../sql/print.ts'
 import type { Parser, ReadStatement } from '../sql/parser.ts'
 import type { Describer } from './block-types.ts'
 import { privateTables, refuseClosed } from './closed-statements.ts'
@@ -117,7 +118,10 @@ async function rewrite(placed: ReadStatement, text: string, request: GateRequest
     planBlock(block.query, { dataSet, parameters, now: someInstant, timeZone: 'UTC', commonTables: new Map(), scans: [] }, noLimits)
     types.push(description.types)
   }
-  if (statement.kind === 'explain' && cut.blocks.length > 0) return explainText(text)
+  if (statement.kind === 'explain' && cut.blocks.length > 0) {
+    const whole = await parts.describer.block(dataSet, printStatement(statement.statement), request.parameterTypes)
+    return explainText(text, whole.kind === 'described' ? whole.types.parameters : [])
+  }
   return rewritten(cut, types)
 }
 

@@ -42,7 +42,7 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
     const description = await parts.describer.block(dataSet, printed(each), [])
     if (description.kind === 'complaint') return { kind: 'error', sqlstate: description.sqlstate, message: description.message, hint: '' }
     const text = blockText(each, description.types)
-    const block = await planText(text, { args: description.parameters.map(() => null), now: request.now, timeZone: request.timeZone }, dataSet, settings.limits, parts.parser, parts.describer)
+    const block = await planText(text, { args: each.parameters.map(number => request.args[number - 1] ?? null), now: request.now, timeZone: request.timeZone }, dataSet, settings.limits, parts.parser, parts.describer)
     const prepared = await prepare(block.plan, request.timeZone, parts.lobby)
     const price = balance === undefined ? refuse('account.closed', { user: request.user, dataset: dataSet.name }) : priceOf(block.plan, prepared.groups, cut.blocks.length, settings, accounts.analyst, balance)
     explained.push({ block, prepared, price, sql: BoundedQuery.of(block.plan, prepared.fixed, { keep: block.plan.oneGroupByNature ? null : block.plan.groupsPerPerson, salts: Array.from({ length: block.plan.keys.length + 1 }, () => 0n) }).text })

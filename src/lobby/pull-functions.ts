@@ -119,10 +119,10 @@ END
 $pull$`
 
 const explain = `
-CREATE OR REPLACE FUNCTION hedgerow.explain(statement text) RETURNS SETOF text
+CREATE OR REPLACE FUNCTION hedgerow.explain(statement text, args jsonb DEFAULT '[]') RETURNS SETOF text
   LANGUAGE plpgsql VOLATILE PARALLEL UNSAFE SECURITY DEFINER SET search_path = pg_catalog, pg_temp AS $explain$
 BEGIN
-  RETURN QUERY SELECT r.c1 FROM jsonb_to_recordset(hedgerow_inside.ask('explain', coalesce(statement, ''), '[]', '[]')) AS r(c1 text);
+  RETURN QUERY SELECT r.c1 FROM jsonb_to_recordset(hedgerow_inside.ask('explain', coalesce(statement, ''), CASE jsonb_typeof(args) WHEN 'array' THEN args ELSE '[]' END, '[]')) AS r(c1 text);
 END
 $explain$`
 
@@ -160,6 +160,6 @@ export const lobbyFunctions = [
   { signature: 'hedgerow_inside.ask(text, text, jsonb, jsonb)', text: ask, open: false },
   { signature: 'hedgerow_inside.no_scan(text)', text: noScan, open: true },
   { signature: 'hedgerow.pull(text, jsonb, jsonb, text[])', text: pull, open: true },
-  { signature: 'hedgerow.explain(text)', text: explain, open: true },
+  { signature: 'hedgerow.explain(text, jsonb)', text: explain, open: true },
   { signature: 'hedgerow.read(text)', text: read, open: true },
 ] as const

@@ -102,8 +102,9 @@ export function refusedText(marker: string): string {
   return printQuery(query)
 }
 
-/** EXPLAIN of a private statement: the lines come from Hedgerow, in PostgreSQL's own column. */
-export function explainText(statement: string): string {
+/** EXPLAIN of a private statement: the lines come from Hedgerow, in PostgreSQL's own column. `parameters` are the types of the statement's, in order. */
+export function explainText(statement: string, parameters: readonly TypeRef[]): string {
+  const args = parameters.map((type, i): Expr => ({ kind: 'cast', arg: { kind: 'parameter', number: i + 1, at: -1 }, type, at: -1 }))
   const query: Query = {
     kind: 'query',
     with: null,
@@ -114,7 +115,7 @@ export function explainText(statement: string): string {
       from: [
         {
           kind: 'function',
-          functions: [{ call: { ...call('explain', [text(statement)]), name: ['hedgerow', 'explain'] }, definitions: [] }],
+          functions: [{ call: { ...call('explain', [text(statement), call('jsonb_build_array', args)]), name: ['hedgerow', 'explain'] }, definitions: [] }],
           rowsFrom: false,
           lateral: false,
           ordinality: false,

@@ -292,6 +292,14 @@ test('EXPLAIN, LIMIT 0, WHERE false, an untaken branch and a list of declared ke
   expect(await charges()).toBe(before)
 })
 
+test('EXPLAIN takes the statement’s parameters', async () => {
+  const client = await raw()
+  client.send(extended('EXPLAIN VERBOSE SELECT pier, count(*) + $2::int FROM trips WHERE fare > $1 AND pier <> $3 GROUP BY pier', ['3', '7', 'p9']), sync)
+  const lines = rows(await client.until('Z')).map(([line]) => line)
+  expect(lines[0]).toBe('Release from trips')
+  expect(lines.find((line) => line?.startsWith('  Vault: '))).toContain("'p9'")
+})
+
 test('EXPLAIN ANALYZE of a private statement neither runs it nor charges for it', async () => {
   const client = await raw()
   const before = await charges()
