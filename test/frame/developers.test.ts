@@ -13,7 +13,7 @@ const manifest = JSON.parse(readFileSync(join(root, 'package.json'), 'utf8')) as
 
 test('DEVELOPERS.md gives the reason of every package, and of no other', () => {
   const [, table = ''] = text.split('## Packages, and why each is there\n')
-  const named = [...table.matchAll(/^\| (`.*?`) \|/gm)].flatMap(([, cell = '']) => [...cell.matchAll(/`([^`]+)`/g)].map(([, name]) => name))
+  const named = [...table.matchAll(/^\| (`.*?`) \|/gm)].flatMap(([, cell = '']) => [...cell.matchAll(/`([^`]+)`/g)].map(([, name = '']) => name))
   expect(named.toSorted()).toEqual([...Object.keys(manifest.dependencies), ...Object.keys(manifest.devDependencies)].toSorted())
 })
 

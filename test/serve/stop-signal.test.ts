@@ -22,7 +22,7 @@ beforeAll(() => {
 })
 afterAll(() => scratch.remove())
 
-async function started(ms: number): Promise<{ readonly child: ChildProcess; readonly code: Promise<number | null>; said(): string }> {
+async function started(ms: number): Promise<{ readonly child: ChildProcess; readonly code: Promise<number | null>; readonly said: () => string }> {
   const child = spawn(process.execPath, [join(scratch.path, 'stops.js'), String(ms)], { stdio: ['ignore', 'pipe', 'inherit'] })
   let said = ''
   child.stdout.setEncoding('utf8').on('data', (text: string) => (said += text))
