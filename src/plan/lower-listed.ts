@@ -1,3 +1,4 @@
+import { Fraction } from '../base/fraction.ts'
 import { refuse } from '../base/refusal.ts'
 import type { CatalogType } from '../catalog/catalog.ts'
 import { castTo } from '../catalog/functions/casts.ts'
@@ -61,12 +62,20 @@ export function lowerListed(item: Extract<FromItem, { kind: 'function' }>, conte
     return refuse('block.mixed', { what: 'a function in FROM other than generate_series' }, item.at)
   const written = call.args.map(arg => fixed(lowerExpr(arg, nowhere, context)))
   const type = seriesType(written, item.at)
+  if (isNought(written[2])) refuse('expr.unsupported', { what: 'generate_series by a step of 0' }, item.at)
   const step = type.family === 'integer' ? type : scalarType('interval')
   const args = written.map((arg, i) => castTo(arg, i === 2 ? step : type, arg.at))
   const name = item.alias?.columns[0] ?? item.alias?.name ?? 'generate_series'
   const table: ListedRows = { kind: 'listed', name: 'generate_series', source: { kind: 'series', args }, columns: new Map([[name, columnOf(name, type, true)]]) }
   const made = scanOf(table, context, item.at, endsOf(written))
   return { source: { kind: 'scan', scan: made.scan }, scope: { items: [{ name: item.alias?.name ?? 'generate_series', schema: '', columns: made.columns }], star: made.columns } }
+}
+
+/** A series by nought raises where it runs, and it may run beside rows. */
+function isNought(step: Scalar | undefined): boolean {
+  if (step === undefined) return false
+  if (step.range !== null) return !step.range.low.isPositive() && !step.range.high.isLess(Fraction.zero)
+  return step.node.kind === 'constant' && !/[1-9]/.test(step.node.text ?? '')
 }
 
 /** What a rising series stays within, where its ends are plain constants: it bounds what is computed from it, as a clamp would. */
