@@ -93,16 +93,28 @@ async function withSession<T>(each: Case, shared: pg.Client, url: string, work: 
 
 const nothing = (): Promise<ReadonlySet<string>> => Promise.resolve(new Set())
 
+/** Releases that a case has been answered with before. */
+const known = new Set<string>()
+
 async function ask(each: Case): Promise<Ran> {
   return withSession(each, analyst, server.url('ana'), async (client) => {
-    const before = await holdNoiseless(client)
     const charged = each.free ? await spent(client) : ''
     const ran = await runAll(client, each.statements, each, holdNoiseless)
-    const fresh = new Set([...ran.releases].filter((id) => !before.has(id)))
+    const fresh = [...ran.releases].filter((id) => !known.has(id))
+    for (const id of fresh) known.add(id)
     if (each.free) expect(await spent(client), 'a free statement costs nothing').toBe(charged)
-    else if (each.statements.some((text) => /\b(?:count|sum|avg)\(/.test(text))) expect(fresh.size, 'every output says how noisy it is').toBeGreaterThan(0)
-    return { ...ran, releases: fresh }
+    else if (each.statements.some((text) => /\b(?:count|sum|avg)\(/.test(text))) expect(fresh.length, 'every output says how noisy it is').toBeGreaterThan(0)
+    return ran
   })
+}
+
+/** What PostgreSQL itself answers: to the statements, and to those in their place where the case gives any. */
+async function askVault(each: Case): Promise<readonly [Ran, Ran | null]> {
+  const { instead } = each
+  const want = await withSession(each, reader, vaultUrl, (client) => runAll(client, each.statements, each, nothing))
+  const other =
+    instead === null ? null : await withSession({ ...each, statements: instead }, reader, vaultUrl, (client) => runAll(client, instead, each, nothing))
+  return [want, other]
 }
 
 function inOrder(rows: Outcome['rows'], ordered: boolean): readonly string[] {
@@ -153,11 +165,7 @@ describe.each([...new Set(answered.map((each) => each.name.split('/')[0] ?? ''))
   test.each(answered.filter((each) => each.name.startsWith(`${topic}/`)).map((each) => [each.name.slice(topic.length + 1), each.title, each] as const))(
     '%s: %s',
     async (_name, _title, each) => {
-      const got = await ask(each)
-      const want = await withSession(each, reader, vaultUrl, (client) => runAll(client, each.statements, each, nothing))
-      const instead = each.instead
-      const other =
-        instead === null ? null : await withSession({ ...each, statements: instead }, reader, vaultUrl, (client) => runAll(client, instead, each, nothing))
+      const [got, [want, other]] = await Promise.all([ask(each), askVault(each)])
       for (const [i, outcome] of got.outcomes.entries()) {
         const [theirs, also] = [want.outcomes[i], other === null ? null : other.outcomes[i]]
         expect(theirs).toBeDefined()
@@ -184,5 +192,5 @@ test.each(refused.map((each) => [each.name, each.title, each] as const))('refuse
 })
 
 test('the corpus is as large as it says', () => {
-  expect(cases.length).toBeGreaterThanOrEqual(130)
+  expect(cases.length).toBeGreaterThanOrEqual(250)
 })

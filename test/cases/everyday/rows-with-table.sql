@@ -1,0 +1,3 @@
+-- TABLE shows rows
+-- refused: rows.private
+TABLE riders;
