@@ -78,11 +78,14 @@ export async function give(block: PlannedBlock, prepared: Prepared, price: Price
   }
 }
 
+/** Our own SQL is several times as long as what was asked. */
+const vaultTextBytes = 1_048_576
+
 /** The bounded SQL, held against the tree it was printed from before anything is debited: parsed and read again, it is that tree. */
 async function boundedQuery(plan: ReleasePlan, prepared: Prepared, parts: GiveParts): Promise<BoundedQuery> {
   const chooses = !plan.oneGroupByNature && !(plan.groups.kind === 'listed' && prepared.listed !== null && BigInt(prepared.listed.length) <= plan.groupsPerPerson)
   const query = BoundedQuery.of(plan, prepared.fixed, { keep: chooses ? plan.groupsPerPerson : null, salts: freshSalts(plan.keys.length + 1, parts.random) })
-  const outcome = await parts.parser.readText(query.text)
+  const outcome = await parts.parser.readText(query.text, vaultTextBytes)
   const read = outcome.kind === 'read' && outcome.statements.length === 1 ? outcome.statements[0] : undefined
   check(read !== undefined && read.refusal === null && read.statement.kind === 'query' && sameTree(read.statement.query, query.tree), "the vault's SQL reads as the tree it was printed from")
   return query

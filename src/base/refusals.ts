@@ -89,6 +89,12 @@ export const refusals = {
     hint: 'Write one SELECT of aggregates over the tables, joined on the person, with WHERE and GROUP BY, and apply the rest to its result: {example}',
     why: 'only shapes whose bound is proved are answered',
   },
+  'block.too-many': {
+    sqlstate: '54000',
+    message: 'this statement asks for more than {ceiling} {what} over private rows',
+    hint: 'Ask for them in several statements, or for the groups of one aggregate: {example}',
+    why: 'each share of a statement’s epsilon would be too small to answer anything, and planning it would keep others waiting',
+  },
   'block.correlated': {
     sqlstate: '42501',
     message: 'an aggregate over private rows cannot use "{column}" of the surrounding query',

@@ -11,6 +11,10 @@ import { queryReads } from './query-reads.ts'
 import type { Names } from './rows-level.ts'
 import { namedItems, type NamedItem } from './visible-names.ts'
 
+/** Each pull carries the texts of all blocks of its statement, and each total is compared with every other: both grow with the square. */
+const blockCeiling = 100
+const callCeiling = 200
+
 /** The name a block's released rows go by in the rewritten statement. */
 export function releasedName(block: number): string {
   return `released_${String(block + 1)}`
@@ -36,6 +40,7 @@ interface Cutting {
 export function cutSelect(query: Query, select: Select, names: Names, blocks: CutBlock[], inside: (expr: Expr) => Expr): Query {
   const items = namedItems(select.from, names.dataSet, names.rows)
   const block = blocks.length
+  if (block === blockCeiling) refuse('block.too-many', { what: 'tables of aggregates', ceiling: blockCeiling.toString() }, select.from[0]?.at ?? -1)
   const cutting: Cutting = { items, keys: [], calls: [], block, inside }
   for (const key of groupKeys(select, items)) addKey(cutting, key)
   // the block keeps its place before those that its own post-processing cuts out
@@ -112,6 +117,7 @@ function rest(expr: Expr, cutting: Cutting): Expr {
   if (call !== null) {
     if (children(call).some(child => asAggregate(child) !== null)) refuse('block.shape', { what: 'an aggregate inside an aggregate' }, expr.at)
     const found = cutting.calls.findIndex(each => sameExpr(each.canonical, form))
+    if (found < 0 && cutting.calls.length === callCeiling) refuse('block.too-many', { what: 'aggregates in one SELECT', ceiling: callCeiling.toString() }, expr.at)
     const place = found >= 0 ? found : cutting.calls.push({ written: call, canonical: form }) - 1
     return released(cutting, `a${String(place)}`, expr.at)
   }

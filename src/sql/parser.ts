@@ -41,8 +41,8 @@ export type ReadOutcome =
 export interface Parser {
   /** PostgreSQL's own tree of each statement. Refuses (text.too-long, text.too-deep, text.too-slow, text.unreadable) what is not given to the parser or breaks it. */
   parse(text: string): Promise<ParseOutcome>
-  /** Our tree of each statement, echo-checked; one statement that cannot be read does not spoil the others. Refuses as `parse` does. */
-  readText(text: string): Promise<ReadOutcome>
+  /** Our tree of each statement, echo-checked; one statement that cannot be read does not spoil the others. Refuses as `parse` does; a text of our own may have a ceiling of its own. */
+  readText(text: string, ceilingBytes?: number): Promise<ReadOutcome>
   close(): Promise<void>
 }
 
@@ -63,8 +63,8 @@ export function createParser(options: ParserOptions = {}): Parser {
   const { watchdogMs = 2000, ceilingBytes = 65536 } = options
   const pool = createPool({ watchdogMs, stackSizeMb: 16, levels: treeCeiling })
 
-  async function parse(text: string): Promise<ParseOutcome> {
-    admit(text, ceilingBytes)
+  async function parse(text: string, ceiling = ceilingBytes): Promise<ParseOutcome> {
+    admit(text, ceiling)
     if (text === '') return { kind: 'parsed', statements: [] }
     const verdict = await pool.parse(text)
     if (verdict.kind === 'parsed') return { kind: 'parsed', statements: statementsOf(verdict.json, Buffer.byteLength(text)) }
@@ -98,9 +98,9 @@ export function createParser(options: ParserOptions = {}): Parser {
   }
 
   return {
-    parse,
-    async readText(text) {
-      const outcome = await parse(text)
+    parse: (text) => parse(text),
+    async readText(text, ceiling) {
+      const outcome = await parse(text, ceiling)
       if (outcome.kind === 'syntax-error') return outcome
       return { kind: 'read', statements: await Promise.all(outcome.statements.map(read)) }
     },

@@ -206,6 +206,22 @@ describe('size and depth', () => {
     )
     expect([{ count: '0' }, '54000', '54001']).toContainEqual(answer)
   })
+  test('more blocks or more aggregates than are answered at once are refused before anything is debited, and soon', async () => {
+    const many = (count: number, each: (i: number) => string): string => Array.from({ length: count }, (_, i) => each(i)).join(', ')
+    const start = Date.now()
+    expect(await refusal(`SELECT ${many(101, (i) => `(SELECT count(*) FROM riders WHERE birth_year = ${i.toString()})`)}`)).toMatchObject({
+      code: '54000',
+      message: expect.stringContaining('[block.too-many]') as string,
+    })
+    expect(await refusal(`SELECT ${many(1500, (i) => `sum(fare + ${i.toString()})`)} FROM trips`)).toMatchObject({
+      code: '54000',
+      message: expect.stringContaining('[block.too-many]') as string,
+    })
+    expect(Date.now() - start).toBeLessThan(10_000)
+    expect(
+      Object.keys((await client.query(`SELECT ${many(200, (i) => `sum(fare + ${i.toString()}) AS c${i.toString()}`)} FROM trips`)).rows[0] as object),
+    ).toHaveLength(200)
+  })
   test('1,664 columns are answered or refused, 1,665 are PostgreSQL’s own complaint', async () => {
     const list = (count: number): string => Array.from({ length: count }, (_, i) => `count(*) + ${i.toString()} AS c${i.toString()}`).join(', ')
     expect(Object.keys((await client.query(`SELECT ${list(1664)} FROM riders`)).rows[0] as object)).toHaveLength(1664)
