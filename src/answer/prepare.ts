@@ -3,13 +3,17 @@ import { refuse } from '../base/refusal.ts'
 import { fixedExpressions, fixedSql, fixedValues } from '../bound/fixed-sql.ts'
 import { countSql, listSql } from '../bound/list-sql.ts'
 import { type FixedValues, noFixedValues } from '../bound/print-scalar.ts'
+import { scalarsOf } from '../bound/print-source.ts'
 import { groupsTouched } from '../bound/reach.ts'
 import { listedRows } from '../plan/fan-out.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
+import { weightOf } from '../plan/weight.ts'
 import type { KeyTexts } from '../release/release.ts'
 import type { Lobby } from './ports.ts'
 
 const groupCeiling = 10_000
+/** Work on each row, see `weightOf`: beyond it no time class hides whether there was a row. */
+const mostWork = 1500
 
 /** What the lobby knows of a block before anything is debited: the statement's own values, the list of groups, and how many of them a person can touch. */
 export interface Prepared {
@@ -20,6 +24,7 @@ export interface Prepared {
 
 /** Asks the lobby; everything here is published or the statement's own. Refuses lists above the ceiling. */
 export async function prepare(plan: ReleasePlan, timeZone: string, lobby: Lobby): Promise<Prepared> {
+  if (weightOf(scalarsOf(plan)) > mostWork) refuse('expr.unsupported', { what: 'so much work on each row' })
   const fixed = await computeFixed(plan, timeZone, lobby)
   for (const scan of plan.fanOut.counted) await countRows(plan, scan, listedRows, fixed, timeZone, lobby)
   for (const scan of plan.scans) if (scan.table.kind === 'listed' && scan.table.source.kind === 'series') await countRows(plan, scan.index, BigInt(groupCeiling), fixed, timeZone, lobby)
