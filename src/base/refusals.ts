@@ -80,7 +80,7 @@ export const refusals = {
   'block.aggregate': {
     sqlstate: '42501',
     message: 'the aggregate {what} is not answered over private rows',
-    hint: 'count(*), count(column), count(DISTINCT {person}), sum and avg are, each with FILTER and WHERE: {example}',
+    hint: 'count(*), count(column), count(DISTINCT {person}), sum, avg, variance and stddev are, each with FILTER and WHERE: {example}',
     why: 'each aggregate needs a proved bound on what one person can change',
   },
   'block.shape': {
