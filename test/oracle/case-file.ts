@@ -4,8 +4,8 @@ import { fileURLToPath } from 'node:url'
 import { check } from '../../src/base/check.ts'
 
 /** What the design changes on purpose; a case says which of them it shows. */
-export const differences = ['empty groups', 'single-person groups', 'padding', 'rounding'] as const
-export type Difference = (typeof differences)[number]
+const differences = ['empty groups', 'single-person groups', 'padding', 'rounding'] as const
+type Difference = (typeof differences)[number]
 
 export interface Parameter {
   readonly type: string
@@ -40,7 +40,7 @@ export function readCases(): readonly Case[] {
   return names.map((name) => parseCase(name.replace(/\.sql$/, ''), readFileSync(join(root, name), 'utf8')))
 }
 
-export function parseCase(name: string, text: string): Case {
+function parseCase(name: string, text: string): Case {
   const lines = text.split('\n')
   const body = lines.findIndex((line) => !line.startsWith('-- '))
   const header = lines.slice(0, body).map((line) => line.slice(3))

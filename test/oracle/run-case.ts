@@ -10,7 +10,7 @@ export interface Outcome {
   readonly copied: string
 }
 
-export interface Complaint {
+interface Complaint {
   readonly code: string
   readonly message: string
   readonly hint: string
