@@ -27,7 +27,8 @@ export async function prepare(plan: ReleasePlan, timeZone: string, lobby: Lobby)
   if (weightOf(scalarsOf(plan)) > mostWork) refuse('expr.unsupported', { what: 'so much work on each row' })
   const fixed = await computeFixed(plan, timeZone, lobby)
   for (const scan of plan.fanOut.counted) await countRows(plan, scan, listedRows, fixed, timeZone, lobby)
-  for (const scan of plan.scans) if (scan.table.kind === 'listed' && scan.table.source.kind === 'series') await countRows(plan, scan.index, BigInt(groupCeiling), fixed, timeZone, lobby)
+  for (const scan of plan.scans)
+    if (scan.table.kind === 'listed' && scan.table.source.kind === 'series') await countRows(plan, scan.index, BigInt(groupCeiling), fixed, timeZone, lobby)
   const listed = plan.groups.kind === 'listed' ? await listGroups(plan, fixed, timeZone, lobby) : null
   return { fixed, listed, groups: groupsTouched(plan, listed === null ? null : BigInt(listed.length || 1)) }
 }

@@ -24,7 +24,8 @@ export function readSessionSettings(raw: Readonly<Record<string, string>>, dataS
     if (text(name) !== '') refuse('setting.bad', { name, value: text(name), expected, sample: "''" })
   }
   unset('margin', 'no value yet: set hedgerow.epsilon and read the margin in EXPLAIN')
-  if (text('replay') !== '' && text('replay') !== 'off') refuse('setting.bad', { name: 'replay', value: text('replay'), expected: "only off: every release is drawn anew", sample: 'off' })
+  if (text('replay') !== '' && text('replay') !== 'off')
+    refuse('setting.bad', { name: 'replay', value: text('replay'), expected: 'only off: every release is drawn anew', sample: 'off' })
   return {
     epsilon: positive('epsilon', text('epsilon') || dataSet.defaults.epsilon, 'a number from 1e-9 to 1e40', '0.1'),
     delta: share('delta', text('delta') || dataSet.defaults.delta, '0, or a number from 1e-30 to below 1', '1e-8'),
@@ -60,12 +61,16 @@ function share(name: string, value: string, expected: string, sample: string): F
 
 function wish(value: string): Wish {
   if (value === '' || value === 'auto') return 'auto'
-  return value === 'laplace' || value === 'gaussian' ? value : refuse('setting.bad', { name: 'noise', value, expected: 'auto, laplace or gaussian', sample: 'auto' })
+  return value === 'laplace' || value === 'gaussian'
+    ? value
+    : refuse('setting.bad', { name: 'noise', value, expected: 'auto, laplace or gaussian', sample: 'auto' })
 }
 
 function limit(name: string, value: string): bigint | null {
   if (value === '') return null
-  return /^[1-9]\d{0,8}$/.test(value) ? BigInt(value) : refuse('setting.bad', { name, value, expected: 'a whole number from 1, or nothing for the policy’s own bound', sample: '5' })
+  return /^[1-9]\d{0,8}$/.test(value)
+    ? BigInt(value)
+    : refuse('setting.bad', { name, value, expected: 'a whole number from 1, or nothing for the policy’s own bound', sample: '5' })
 }
 
 function flag(name: string, value: string): boolean {

@@ -13,9 +13,10 @@ const heavier: readonly number[] = [60, 180, 540]
 export function timeClasses(plan: ReleasePlan, deadlineMs: number): readonly number[] {
   const scans = plan.scans.length
   const weight = weightOf(scalarsOf(plan))
-  const raises = (scans > 2 ? 1 : 0) + (plan.fanOut.capped.size > 0 ? 1 : 0) + (plan.fanOut.counted.length > 0 ? 1 : 0) + heavier.filter(work => weight > work).length
+  const raises =
+    (scans > 2 ? 1 : 0) + (plan.fanOut.capped.size > 0 ? 1 : 0) + (plan.fanOut.counted.length > 0 ? 1 : 0) + heavier.filter((work) => weight > work).length
   const base = plan.dataSet.replyAfterMs
-  const above = ladder.filter(ms => ms > base && ms < deadlineMs)
-  const classes = [base, ...above].slice(raises).filter(ms => ms < deadlineMs)
+  const above = ladder.filter((ms) => ms > base && ms < deadlineMs)
+  const classes = [base, ...above].slice(raises).filter((ms) => ms < deadlineMs)
   return [...(classes.length > 0 ? classes : above.slice(-1)), deadlineMs]
 }

@@ -48,6 +48,7 @@ export function fixedSql(expressions: readonly Scalar[]): Query {
 
 /** The computed values by what names them. Refused where one lies outside of what the plan holds it to be, as the year of infinity does. */
 export function fixedValues(expressions: readonly Scalar[], row: readonly (string | null)[]): FixedValues {
-  for (const [i, scalar] of expressions.entries()) if (!holds(scalar.range, row[i] ?? null)) refuse('expr.unbounded', { expression: 'a value of the statement’s own' }, scalar.at)
+  for (const [i, scalar] of expressions.entries())
+    if (!holds(scalar.range, row[i] ?? null)) refuse('expr.unbounded', { expression: 'a value of the statement’s own' }, scalar.at)
   return new Map(expressions.map((scalar, i) => [fixedKey(scalar), row[i] ?? null]))
 }

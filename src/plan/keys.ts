@@ -31,11 +31,12 @@ function fits(scalar: Scalar): void {
   const limit = limits[scalar.type.name]
   if (limit === undefined) return
   const range = scalar.range
-  if (range === null || !range.high.isAtMost(Fraction.make(limit)) || range.low.isLess(Fraction.make(-limit))) refuse('expr.unbounded', { expression: 'this key' }, scalar.at)
+  if (range === null || !range.high.isAtMost(Fraction.make(limit)) || range.low.isLess(Fraction.make(-limit)))
+    refuse('expr.unbounded', { expression: 'this key' }, scalar.at)
 }
 
 function isPrivateScan(index: number, scans: readonly Scan[]): boolean {
-  return scans.find(scan => scan.index === index)?.table.kind === 'private'
+  return scans.find((scan) => scan.index === index)?.table.kind === 'private'
 }
 
 interface Component {
@@ -49,7 +50,7 @@ interface Component {
 function components(source: Source, tests: readonly Scalar[], padded: boolean): readonly Component[] {
   if (!isPrivate(source)) {
     const scans = indexesIn(source)
-    return [{ source, scans, tests: tests.filter(test => within(test, scans)), padded }]
+    return [{ source, scans, tests: tests.filter((test) => within(test, scans)), padded }]
   }
   switch (source.kind) {
     case 'scan':
@@ -66,7 +67,7 @@ function components(source: Source, tests: readonly Scalar[], padded: boolean): 
 
 function within(test: Scalar, scans: ReadonlySet<number>): boolean {
   const used = scansOf(test)
-  return used.size > 0 && [...used].every(scan => scans.has(scan))
+  return used.size > 0 && [...used].every((scan) => scans.has(scan))
 }
 
 /**
@@ -79,7 +80,7 @@ export function listsOf(keys: readonly Key[], source: Source, tests: readonly Sc
   const byComponent = new Map<Component, number[]>()
   for (const [index, key] of keys.entries()) {
     const used = scansOf(key.scalar)
-    const component = parts.find(part => used.size > 0 && [...used].every(scan => part.scans.has(scan)))
+    const component = parts.find((part) => used.size > 0 && [...used].every((scan) => part.scans.has(scan)))
     if (component !== undefined) {
       byComponent.set(component, [...(byComponent.get(component) ?? []), index])
       continue
@@ -88,7 +89,8 @@ export function listsOf(keys: readonly Key[], source: Source, tests: readonly Sc
     if (domain === null) return null
     factors.push(domain)
   }
-  for (const [component, indexes] of byComponent) factors.push({ kind: 'component', keys: indexes, source: component.source, tests: component.tests, padded: component.padded })
+  for (const [component, indexes] of byComponent)
+    factors.push({ kind: 'component', keys: indexes, source: component.source, tests: component.tests, padded: component.padded })
   return factors
 }
 
@@ -99,5 +101,5 @@ export function listsOf(keys: readonly Key[], source: Source, tests: readonly Sc
 export function isOneGroupByNature(keys: readonly Key[], spread: FanOut, source: Source): boolean {
   if (spread.single) return true
   const padded = paddedScans(source)
-  return keys.every(key => [...scansOf(key.scalar)].every(scan => spread.determined.has(scan) && !padded.has(scan)))
+  return keys.every((key) => [...scansOf(key.scalar)].every((scan) => spread.determined.has(scan) && !padded.has(scan)))
 }

@@ -25,7 +25,14 @@ export function lowerColumn(scan: number, column: DataColumn, at: number): Scala
   const range = rangeOfType(type, column)
   return {
     type,
-    node: { kind: 'column', scan, column: column.name, clamped: null, offers, ...(column.collation == null ? {} : { collation: { name: column.collation, deterministic: column.deterministic } }) },
+    node: {
+      kind: 'column',
+      scan,
+      column: column.name,
+      clamped: null,
+      offers,
+      ...(column.collation == null ? {} : { collation: { name: column.collation, deterministic: column.deterministic } }),
+    },
     nullable: !column.notNull,
     range: type.family === 'numeric' ? null : range,
     carrier: 'own',

@@ -20,7 +20,14 @@ export interface Scan {
 /** The FROM and WHERE of a block. RIGHT joins are turned into LEFT; comma lists and CROSS JOIN are inner joins without a condition. */
 export type Source =
   | { readonly kind: 'scan'; readonly scan: Scan }
-  | { readonly kind: 'join'; readonly type: 'inner' | 'left'; readonly left: Source; readonly right: Source; readonly on: readonly Scalar[]; readonly at: number }
+  | {
+      readonly kind: 'join'
+      readonly type: 'inner' | 'left'
+      readonly left: Source
+      readonly right: Source
+      readonly on: readonly Scalar[]
+      readonly at: number
+    }
   | { readonly kind: 'filter'; readonly input: Source; readonly tests: readonly Scalar[] }
 
 export function* scansIn(source: Source): Generator<Scan> {
@@ -38,7 +45,7 @@ export function* scansIn(source: Source): Generator<Scan> {
 }
 
 export function indexesIn(source: Source): ReadonlySet<number> {
-  return new Set([...scansIn(source)].map(scan => scan.index))
+  return new Set([...scansIn(source)].map((scan) => scan.index))
 }
 
 /** Scans on the padded side of a LEFT JOIN: NULL on the rows that found no partner. */

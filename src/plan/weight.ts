@@ -43,5 +43,7 @@ function weigh(scalar: Scalar): Weighed {
 /** Decimal digits of a number that is computed in numeric. */
 function digits(scalar: Scalar): number {
   if (scalar.carrier !== 'numeric' || scalar.range === null) return 0
-  return Math.max(...[scalar.range.low, scalar.range.high, scalar.range.step].map((end) => (end === null ? 0 : end.n.toString().length + end.d.toString().length)))
+  return Math.max(
+    ...[scalar.range.low, scalar.range.high, scalar.range.step].map((end) => (end === null ? 0 : end.n.toString().length + end.d.toString().length)),
+  )
 }

@@ -24,7 +24,7 @@ test('work that only a row pays for is refused where no time class could hide it
     for (const sql of [
       `SELECT count(*) FROM trips JOIN ${doubled(9)} USING (rider_id) WHERE rider_id = ${rider} AND upper(x) LIKE '%q%w%'`,
       `SELECT count(*) FROM trips WHERE rider_id = ${rider} AND (${Array.from({ length: 20 }, (_, i) => `${Array.from({ length: 50 }, () => 'trip_id').join(' * ')} < ${(-i).toString()}`).join(' OR ')})`,
-      `SELECT count(*) FROM trips WHERE rider_id = ${rider} AND (${Array.from({ length: 300 }, () => "fare::numeric / 7 / 7 > 1").join(' OR ')})`,
+      `SELECT count(*) FROM trips WHERE rider_id = ${rider} AND (${Array.from({ length: 300 }, () => 'fare::numeric / 7 / 7 > 1').join(' OR ')})`,
     ]) {
       const outcome = await outcomeOf(ana, sql)
       expect(outcome).toMatchObject({ code: '42501', message: 'so much work on each row is not answered over private rows [expr.unsupported]' })

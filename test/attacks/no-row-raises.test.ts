@@ -36,8 +36,8 @@ const statements: readonly string[] = [
   'SELECT sum(fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare * fare) FROM trips',
   'SELECT count(*) FROM trips WHERE trip_id * trip_id * trip_id > 1 OR trip_id + 1 > 0 OR -trip_id > 0 OR abs(trip_id) > 0',
   `SELECT count(*) FROM trips WHERE ${Array.from({ length: 4096 }, () => 'trip_id').join(' * ')} > 1`,
-  'SELECT sum(DATE \'5874897-12-31\' - joined) FROM riders',
-  'SELECT date_trunc(\'month\', boarded), sum(exact / fare), sum(fare % bundle) FROM trips GROUP BY 1',
+  "SELECT sum(DATE '5874897-12-31' - joined) FROM riders",
+  "SELECT date_trunc('month', boarded), sum(exact / fare), sum(fare % bundle) FROM trips GROUP BY 1",
 ]
 
 const worst = `
@@ -72,8 +72,10 @@ test('no error text of the vault reaches the client or the log', async () => {
     ALTER TABLE trips RENAME TO trips_kept; CREATE VIEW trips AS SELECT * FROM trips_kept WHERE raise_secret()`)
   const raised = await outcomeOf(bob, 'SELECT count(*) FROM trips')
   await vault.query('DROP VIEW trips; ALTER TABLE trips_kept RENAME TO trips')
-  for (const outcome of [gone, raised]) expect(outcome).toMatchObject({ code: '58000', message: 'the answer could not be made; what was debited stands [release.failed]' })
+  for (const outcome of [gone, raised])
+    expect(outcome).toMatchObject({ code: '58000', message: 'the answer could not be made; what was debited stands [release.failed]' })
   const logged = JSON.stringify(server.logged.slice(before))
-  for (const word of ['secret', 'rider seven', 'owes', 'does not exist', 'exact', 'SELECT']) expect(`${JSON.stringify([gone, raised])} ${logged}`).not.toContain(word)
+  for (const word of ['secret', 'rider seven', 'owes', 'does not exist', 'exact', 'SELECT'])
+    expect(`${JSON.stringify([gone, raised])} ${logged}`).not.toContain(word)
   expect(await outcomeOf(bob, 'SELECT count(*) FROM trips')).toHaveProperty('rows')
 })

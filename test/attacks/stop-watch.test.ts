@@ -38,7 +38,7 @@ async function sinceDebit(client: pg.Client, sql: string): Promise<number> {
 
 /** The same statement about a rider with many rows and about one with none. */
 function about(sql: string): readonly string[] {
-  return ['77', '999999'].map(rider => sql.replaceAll('$rider', rider))
+  return ['77', '999999'].map((rider) => sql.replaceAll('$rider', rider))
 }
 
 describe('a reply leaves at the instant of its time class, whosever rows it read', () => {
@@ -47,7 +47,11 @@ describe('a reply leaves at the instant of its time class, whosever rows it read
     ['a mean by a declared key', 'SELECT pier, avg(fare) FROM trips WHERE rider_id = $rider GROUP BY pier', classMs],
     ['keys that are selected', 'SELECT fare, count(*) FROM trips WHERE rider_id = $rider GROUP BY fare', classMs],
     ['a self-join', 'SELECT count(*) FROM trips a JOIN trips b USING (rider_id) WHERE rider_id = $rider', 3000],
-    ['a triple self-join', 'SELECT count(*) FROM trips a, trips b, trips c WHERE a.rider_id = b.rider_id AND b.rider_id = c.rider_id AND a.rider_id = $rider', 10_000],
+    [
+      'a triple self-join',
+      'SELECT count(*) FROM trips a, trips b, trips c WHERE a.rider_id = b.rider_id AND b.rider_id = c.rider_id AND a.rider_id = $rider',
+      10_000,
+    ],
   ])(
     '%s',
     async (_, sql, instant) => {

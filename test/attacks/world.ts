@@ -43,7 +43,9 @@ tables:
   piers: { published: true }
 `
 
-export async function hostileWorld(options: { readonly more?: string; readonly clock?: 'prompt' | 'real'; readonly statementTimeoutMs?: number; readonly policy?: string } = {}): Promise<TestHedgerow> {
+export async function hostileWorld(
+  options: { readonly more?: string; readonly clock?: 'prompt' | 'real'; readonly statementTimeoutMs?: number; readonly policy?: string } = {},
+): Promise<TestHedgerow> {
   return testHedgerow({
     vault: hostileVault + (options.more ?? ''),
     policy: options.policy ?? hostilePolicy,
@@ -61,7 +63,11 @@ export interface Complained {
 }
 
 /** What a statement gives: its rows as text, or its error. */
-export async function outcomeOf(client: pg.Client, sql: string, values: readonly unknown[] = []): Promise<{ readonly rows: readonly (readonly (string | null)[])[] } | Complained> {
+export async function outcomeOf(
+  client: pg.Client,
+  sql: string,
+  values: readonly unknown[] = [],
+): Promise<{ readonly rows: readonly (readonly (string | null)[])[] } | Complained> {
   try {
     const result = await client.query<(string | null)[]>({ text: sql, values: [...values], rowMode: 'array' })
     return { rows: result.rows }

@@ -39,7 +39,7 @@ export function apply(form: FormName, args: readonly Scalar[], type: ScalarType,
   return {
     type,
     node,
-    nullable: more.nullable ?? args.some(arg => arg.nullable),
+    nullable: more.nullable ?? args.some((arg) => arg.nullable),
     range: more.range ?? null,
     carrier: 'own',
     at: more.at,

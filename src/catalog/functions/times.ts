@@ -5,7 +5,21 @@ import { scalarType } from '../scalar-type.ts'
 import { apply } from './apply.ts'
 import { clamped, isClamped } from './clamped.ts'
 
-export const truncUnits = ['microseconds', 'milliseconds', 'second', 'minute', 'hour', 'day', 'week', 'month', 'quarter', 'year', 'decade', 'century', 'millennium'] as const
+export const truncUnits = [
+  'microseconds',
+  'milliseconds',
+  'second',
+  'minute',
+  'hour',
+  'day',
+  'week',
+  'month',
+  'quarter',
+  'year',
+  'decade',
+  'century',
+  'millennium',
+] as const
 
 /** Fields of extract and date_part with the values they can take over any finite date or time; null: bounded by the clamp only. */
 export const fieldRanges: Readonly<Record<string, readonly [number, number] | null>> = {
@@ -53,8 +67,15 @@ export function extract(field: string, value: Scalar, name: 'extract' | 'date_pa
   const inside = bounded(value)
   const type = scalarType(name === 'extract' ? 'numeric' : 'float8')
   const [low, high] = range === null ? yearsOf(inside) : [BigInt(range[0]), BigInt(range[1])]
-  const proved = range === null && plain === 'decade' ? { low: Fraction.make(low, 10n), high: Fraction.make(high, 10n) } : { low: Fraction.make(low), high: Fraction.make(high) }
-  return apply('extract', [inside], type, { words: [plain, name], range: { low: Fraction.make(proved.low.floor()), high: Fraction.make(proved.high.ceil()), step: Fraction.one }, at })
+  const proved =
+    range === null && plain === 'decade'
+      ? { low: Fraction.make(low, 10n), high: Fraction.make(high, 10n) }
+      : { low: Fraction.make(low), high: Fraction.make(high) }
+  return apply('extract', [inside], type, {
+    words: [plain, name],
+    range: { low: Fraction.make(proved.low.floor()), high: Fraction.make(proved.high.ceil()), step: Fraction.one },
+    at,
+  })
 }
 
 /** The years of any date that PostgreSQL has. */
@@ -64,7 +85,7 @@ const allYears: readonly [bigint, bigint] = [-4714n, 5_874_898n]
 function yearsOf(scalar: Scalar): readonly [bigint, bigint] {
   const node = scalar.node
   const ends = node.kind === 'constant' ? [node.text, node.text] : node.kind === 'column' && node.clamped !== null ? [node.clamped.low, node.clamped.high] : []
-  const [low, high] = ends.map(end => /^\s*(\d{4,7})-\d\d?-\d\d?(?:[ T][\d:.+\-Z]*)?$/.exec(end ?? '')?.[1])
+  const [low, high] = ends.map((end) => /^\s*(\d{4,7})-\d\d?-\d\d?(?:[ T][\d:.+\-Z]*)?$/.exec(end ?? '')?.[1])
   if (low !== undefined && high !== undefined) return [BigInt(low) - 1n, BigInt(high) + 1n]
   const [arg] = node.kind === 'apply' && node.form === 'cast' ? node.args : []
   return arg === undefined || !isDateOrTime(arg) ? allYears : yearsOf(arg)
@@ -82,7 +103,10 @@ export function shift(sign: '+' | '-', value: Scalar, by: Scalar, at: number): S
 export function daysBetween(left: Scalar, right: Scalar, at: number): Scalar {
   const [a, b] = [bounded(left), bounded(right)]
   const [from, to] = [yearsOf(a), yearsOf(b)]
-  const days = (years: bigint): Fraction => Fraction.make(years * 366n).max(mostDays.neg()).min(mostDays)
+  const days = (years: bigint): Fraction =>
+    Fraction.make(years * 366n)
+      .max(mostDays.neg())
+      .min(mostDays)
   return apply('days-between', [a, b], scalarType('int4'), { range: { low: days(from[0] - to[1]), high: days(from[1] + 1n - to[0]), step: Fraction.one }, at })
 }
 
@@ -128,9 +152,12 @@ function corners(scalar: Scalar): readonly Scalar[] {
     case 'nullif':
       return node.args.slice(0, 1).flatMap(corners)
     default: {
-      const combined = node.args.reduce<readonly (readonly Scalar[])[]>((rows, arg) => rows.flatMap(row => corners(arg).map(corner => [...row, corner])), [[]])
+      const combined = node.args.reduce<readonly (readonly Scalar[])[]>(
+        (rows, arg) => rows.flatMap((row) => corners(arg).map((corner) => [...row, corner])),
+        [[]],
+      )
       if (combined.length > cornerCeiling) refuse('expr.unsupported', { what: 'a date or time with so many branches' }, scalar.at)
-      return combined.map(args => ({ ...scalar, node: { ...node, args } }))
+      return combined.map((args) => ({ ...scalar, node: { ...node, args } }))
     }
   }
 }
@@ -152,5 +179,5 @@ export function atEnd(scalar: Scalar, end: 'low' | 'high'): Scalar {
     return { ...scalar, node: { kind: 'constant', text: clamp[end] }, carrier: 'own', nullable: false }
   }
   if (node.kind !== 'apply') return scalar
-  return { ...scalar, node: { ...node, args: node.args.map(arg => atEnd(arg, end)) } }
+  return { ...scalar, node: { ...node, args: node.args.map((arg) => atEnd(arg, end)) } }
 }
