@@ -155,7 +155,7 @@ async function atItsInstant(work: Promise<ReleasedTable>, start: number, classes
   let settled: { readonly table: ReleasedTable } | { readonly failure: Failure } | null = null
   const done = work.then(
     table => (settled = { table }),
-    (problem: unknown) => (settled = { failure: problem instanceof Failure ? problem : broken(problem, parts.log) }),
+    (problem: unknown) => (settled = { failure: problem instanceof Failure ? problem : signal.aborted ? new Failure('internal') : broken(problem, parts.log) }),
   )
   for (const [i, classMs] of classes.entries()) {
     await parts.clock.until(start + classMs, signal)
