@@ -55,13 +55,19 @@ async function askedOf(each: Case, client: pg.Client): Promise<readonly Asked[]>
   for (const text of each.statements) {
     const query = queryIn(text)
     if (!/^(?:SELECT|WITH|VALUES|\()/.test(query) || /^SELECT .*? FROM (?:per_kind|per_concession|notes|liked)\b/.test(query)) continue
-    const { rows } = await client.query<{ 'QUERY PLAN': string }>(`EXPLAIN VERBOSE ${query}`)
+    const { rows } = await client.query<{ 'QUERY PLAN': string }>(`EXPLAIN VERBOSE ${query}`, valuesOf(query, each))
     const vault = rows.flatMap((row) => (row['QUERY PLAN'].startsWith('  Vault: ') ? [row['QUERY PLAN'].slice('  Vault: '.length)] : []))
     const plans = await plansOf(query, each)
     check(plans.length === vault.length, `${each.name} has a plan for each question to the vault`)
     all.push(...vault.map((sql, i) => ({ name: each.name, sql, reads: plans[i] ?? [] })))
   }
   return all
+}
+
+/** A value for each of the statement's parameters; a prepared statement's own are numbers. */
+function valuesOf(query: string, each: Case): (string | null)[] | undefined {
+  const count = new Set(query.match(/\$\d+/g) ?? []).size
+  return count === 0 ? undefined : Array.from({ length: count }, (_, i) => each.parameters[i]?.value ?? (each.parameters.length > 0 ? null : '1'))
 }
 
 /** What each block of a statement reads, by its plan. */
