@@ -36,11 +36,11 @@ function knownColumn(owned: Owned, known: ReadonlySet<number>, ref: ColumnRef, s
 /** Scans that have at most one row once the scans of `known` are fixed; `matched`: among the rows of LEFT JOINs that found a match. */
 function close(owned: Owned, known: ReadonlySet<number>, scans: readonly Scan[], matched = false): ReadonlySet<number> {
   const closed = new Set(known)
-  for (let changed = true; changed; ) {
+  for (let changed = true; changed;) {
     changed = false
     for (const scan of scans) {
       if (closed.has(scan.index)) continue
-      if (uniqueKeysOf(scan).some(key => key.every(column => knownColumn(owned, closed, { scan: scan.index, column }, scans, matched)))) {
+      if (uniqueKeysOf(scan).some((key) => key.every((column) => knownColumn(owned, closed, { scan: scan.index, column }, scans, matched)))) {
         closed.add(scan.index)
         changed = true
       }
@@ -54,13 +54,13 @@ function uniqueKeysOf(scan: Scan): readonly (readonly string[])[] {
   const [column] = scan.table.columns.keys()
   if (column === undefined) return []
   const source = scan.table.source
-  return (source.kind === 'series' ? isRising(source.args) : isDistinct(source.rows.map(row => row[0]))) ? [[column]] : []
+  return (source.kind === 'series' ? isRising(source.args) : isDistinct(source.rows.map((row) => row[0]))) ? [[column]] : []
 }
 
 /** Whether a series has no value twice: by whole numbers, or by a length of time of one unit (1 month - 30 days can turn back). */
 function isRising(args: readonly Scalar[]): boolean {
   const step = args[2]
-  if (args.every(arg => arg.type.family === 'integer')) return true
+  if (args.every((arg) => arg.type.family === 'integer')) return true
   return step?.node.kind === 'constant' && /^\s*[1-9]\d{0,5} *(second|minute|hour|day|week|mon|month|year)s?\s*$/i.test(step.node.text ?? '')
 }
 
@@ -72,7 +72,7 @@ function isDistinct(values: readonly (Scalar | undefined)[]): boolean {
     const range = isNumber(value.type) && value.type.family !== 'float' ? value.range : null
     return range === null ? null : range.low.toString()
   })
-  return forms.every(form => form !== null) && new Set(forms).size === forms.length
+  return forms.every((form) => form !== null) && new Set(forms).size === forms.length
 }
 
 /** How a person's rows can multiply in the joins, and what keeps that within a static ceiling. */
@@ -82,18 +82,18 @@ export function fanOut(owned: Owned): FanOut {
   let known = determined
   const leaves: Scan[] = []
   while (known.size < scans.length) {
-    const free = scans.filter(scan => !known.has(scan.index))
+    const free = scans.filter((scan) => !known.has(scan.index))
     const ranked = free
-      .map(scan => ({ scan, size: close(owned, new Set([...known, scan.index]), scans).size }))
+      .map((scan) => ({ scan, size: close(owned, new Set([...known, scan.index]), scans).size }))
       .sort((a, b) => Number(b.scan.table.kind === 'private') - Number(a.scan.table.kind === 'private') || b.size - a.size)
     const next = ranked[0]?.scan
     if (next === undefined) break
     leaves.push(next)
     known = close(owned, new Set([...known, next.index]), scans)
   }
-  const own = leaves.filter(scan => scan.table.kind === 'private')
-  const ownLeaves = new Set(own.map(scan => scan.index))
-  const counted = leaves.filter(scan => scan.table.kind !== 'private')
+  const own = leaves.filter((scan) => scan.table.kind === 'private')
+  const ownLeaves = new Set(own.map((scan) => scan.index))
+  const counted = leaves.filter((scan) => scan.table.kind !== 'private')
   const single = leaves.length === 0
   if (leaves.length <= 1 && counted.length === 0) return { determined, capped: new Map(), counted: [], leaves: ownLeaves, single }
   if (counted.length === 0 && addsUp(owned, own, scans)) return { determined, capped: new Map(), counted: [], leaves: ownLeaves, single }
@@ -106,7 +106,7 @@ export function fanOut(owned: Owned): FanOut {
     if (scan.table.kind === 'private' && scan.table.owner.kind !== 'column') refuse('join.fan-out', { ceiling: listedRows.toString() }, scan.at)
     capped.set(scan.index, each)
   }
-  return { determined, capped, counted: counted.map(scan => scan.index), leaves: ownLeaves, single: false }
+  return { determined, capped, counted: counted.map((scan) => scan.index), leaves: ownLeaves, single: false }
 }
 
 /** Whether two leaves meet in a LEFT JOIN in which a row of the one has at most one match in the other: then there are no more rows than both have together. */
