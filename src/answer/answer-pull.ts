@@ -63,9 +63,10 @@ async function answerBlock(request: PullRequest, signal: AbortSignal, parts: Pul
   const block = await planText(request.text, request, dataSet, settings.limits, parts.parser, parts.describer)
   const prepared = await prepare(block.plan, request.timeZone, parts.lobby)
   if (block.plan.totals.length === 0) return rows((prepared.listed ?? []).map(keys => rowOf(block.labels, block.plan.columns.map(column => keys[column.index] ?? null))))
-  const [balance] = await parts.ledger.balances([accounts.analyst])
+  const balances = await parts.ledger.balances([accounts.analyst, accounts.everyone])
+  const [balance] = balances
   if (balance === undefined) throw new Failure('ledger')
-  const price = priceOf(block.plan, prepared.groups, sharesOf(request), settings, accounts.analyst, balance)
+  const price = priceOf(block.plan, prepared.groups, sharesOf(request), settings, accounts.analyst, balance, balances)
   const given = await give(block, prepared, price, accounts, settings, request, parts, signal)
   parts.lastAnswers.add(request, outputsOf(block, price, prepared, settings, given))
   return { kind: 'rows', rows: given.table.rows.map(row => rowOf(block.labels, row)), notice: noticeOf(block, given, settings, price) }

@@ -2,7 +2,7 @@ import { cutStatement } from '../plan/cut.ts'
 import { blockText } from '../plan/rewrite.ts'
 import { refuse } from '../base/refusal.ts'
 import { BoundedQuery } from '../bound/bounded-query.ts'
-import { reachOf } from '../bound/reach.ts'
+import { groupsToKeep, reachOf } from '../bound/reach.ts'
 import { timesLeft } from '../budget/left.ts'
 import { printExpr } from '../sql/print.ts'
 import type { Statement } from '../sql/tree.ts'
@@ -36,7 +36,8 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
   const placed = outcome.kind === 'read' ? outcome.statements[0] : undefined
   if (placed === undefined || placed.refusal !== null || placed.statement.kind !== 'explain') return refuse('block.shape', { what: 'EXPLAIN of anything but one statement that can be read' })
   const cut = cutStatement(placed.statement.statement, dataSet)
-  const [balance] = await parts.ledger.balances([accounts.analyst])
+  const balances = await parts.ledger.balances([accounts.analyst, accounts.everyone])
+  const [balance] = balances
   const explained: Explained[] = []
   for (const each of cut.blocks) {
     const description = await parts.describer.block(dataSet, printed(each), [])
@@ -44,8 +45,8 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
     const text = blockText(each, description.types)
     const block = await planText(text, { args: each.parameters.map(number => request.args[number - 1] ?? null), now: request.now, timeZone: request.timeZone }, dataSet, settings.limits, parts.parser, parts.describer)
     const prepared = await prepare(block.plan, request.timeZone, parts.lobby)
-    const price = balance === undefined ? refuse('account.closed', { user: request.user, dataset: dataSet.name }) : priceOf(block.plan, prepared.groups, cut.blocks.length, settings, accounts.analyst, balance)
-    explained.push({ block, prepared, price, sql: BoundedQuery.of(block.plan, prepared.fixed, { keep: block.plan.oneGroupByNature ? null : block.plan.groupsPerPerson, salts: Array.from({ length: block.plan.keys.length + 1 }, () => 0n) }).text })
+    const price = balance === undefined ? refuse('account.closed', { user: request.user, dataset: dataSet.name }) : priceOf(block.plan, prepared.groups, cut.blocks.length, settings, accounts.analyst, balance, balances)
+    explained.push({ block, prepared, price, sql: BoundedQuery.of(block.plan, prepared.fixed, { keep: groupsToKeep(block.plan, prepared.listed?.length ?? null), salts: Array.from({ length: block.plan.keys.length + 1 }, () => 0n) }).text })
   }
   const verbose = wants(placed.statement, 'verbose')
   const lines = explained.flatMap((each, i) => linesOf(each, i, explained.length, settings, balance, verbose))

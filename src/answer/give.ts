@@ -5,6 +5,7 @@ import { Fraction } from '../base/fraction.ts'
 import type { Clock, Log, RandomBytes } from '../base/ports.ts'
 import { refuse } from '../base/refusal.ts'
 import { BoundedQuery } from '../bound/bounded-query.ts'
+import { groupsToKeep } from '../bound/reach.ts'
 import { debitFrom } from '../budget/debit.ts'
 import type { Balance, Charge, Ledger } from '../budget/ledger.ts'
 import { BitSource } from '../noise/bits.ts'
@@ -59,6 +60,7 @@ export async function give(block: PlannedBlock, prepared: Prepared, price: Price
   const { plan } = block
   const query = await boundedQuery(plan, prepared, parts)
   const giveBack = await parts.slots.take(accounts.analyst.id, signal)
+  let leave = (now: number): number => now
   try {
     if (parts.overruns.isPaused(accounts.analyst.id, parts.clock.now())) refuse('account.overruns')
     const outcome = await debit(plan, prepared, price, accounts, request, parts)
@@ -71,11 +73,19 @@ export async function give(block: PlannedBlock, prepared: Prepared, price: Price
       await parts.ledger.store(table.id, JSON.stringify({ columns: block.labels, rows: table.rows }))
       return table
     })()
+    leave = nextInstant(start, classes)
     const table = await atItsInstant(work, start, classes, accounts.analyst.id, parts, signal)
     return { table, charge: price.charge, balances: outcome.balances, at: start }
   } finally {
-    giveBack()
+    // by INVARIANT QUIET: a place that a cancel frees at once would tell how long the others wait for it
+    if (signal.aborted) void parts.clock.until(leave(parts.clock.now())).then(giveBack, giveBack)
+    else giveBack()
   }
+}
+
+/** The first instant of a release's classes that is not before `now`. */
+function nextInstant(start: number, classes: readonly number[]): (now: number) => number {
+  return (now) => classes.map((each) => start + each).find((instant) => instant >= now) ?? now
 }
 
 /** Our own SQL is several times as long as what was asked. */
@@ -83,8 +93,7 @@ const vaultTextBytes = 1_048_576
 
 /** The bounded SQL, held against the tree it was printed from before anything is debited: parsed and read again, it is that tree. */
 async function boundedQuery(plan: ReleasePlan, prepared: Prepared, parts: GiveParts): Promise<BoundedQuery> {
-  const chooses = !plan.oneGroupByNature && !(plan.groups.kind === 'listed' && prepared.listed !== null && BigInt(prepared.listed.length) <= plan.groupsPerPerson)
-  const query = BoundedQuery.of(plan, prepared.fixed, { keep: chooses ? plan.groupsPerPerson : null, salts: freshSalts(plan.keys.length + 1, parts.random) })
+  const query = BoundedQuery.of(plan, prepared.fixed, { keep: groupsToKeep(plan, prepared.listed?.length ?? null), salts: freshSalts(plan.keys.length + 1, parts.random) })
   const outcome = await parts.parser.readText(query.text, vaultTextBytes)
   const read = outcome.kind === 'read' && outcome.statements.length === 1 ? outcome.statements[0] : undefined
   check(read !== undefined && read.refusal === null && read.statement.kind === 'query' && sameTree(read.statement.query, query.tree), "the vault's SQL reads as the tree it was printed from")

@@ -6,9 +6,9 @@ export interface Overruns {
   isPaused(account: string, at: number): boolean
 }
 
-const windowMs = 3_600_000
+const windowMs = 86_400_000
 
-/** An account is paused while it has more than `most` overruns within an hour. */
+/** An account is paused while it has more than `most` overruns within a day. */
 export function createOverruns(most: number, log: Log): Overruns {
   const times = new Map<string, readonly number[]>()
   const recent = (account: string, at: number): readonly number[] => (times.get(account) ?? []).filter(time => time > at - windowMs)
@@ -16,7 +16,7 @@ export function createOverruns(most: number, log: Log): Overruns {
     count: (account, at) => {
       const all = [...recent(account, at), at]
       times.set(account, all)
-      log('warn', 'answer.overrun', { account, within_the_hour: all.length })
+      log('warn', 'answer.overrun', { account, within_the_day: all.length })
     },
     isPaused: (account, at) => recent(account, at).length > most,
   }

@@ -28,7 +28,7 @@ export interface Price {
  * The price of one of `blocks` equal shares of a statement's epsilon. A function of plan, settings and account alone. INVARIANT STATIC; INVARIANT CALIBRATED:
  * the sensitivities are the plan's own.
  */
-export function priceOf(plan: ReleasePlan, groups: bigint, blocks: number, settings: SessionSettings, account: Account, balance: Balance): Price {
+export function priceOf(plan: ReleasePlan, groups: bigint, blocks: number, settings: SessionSettings, account: Account, balance: Balance, balances: readonly Balance[]): Price {
   const selects = plan.groups.kind === 'selected'
   const shares = Fraction.make(BigInt(blocks))
   const delta = selects ? settings.delta.div(shares) : Fraction.zero
@@ -42,7 +42,7 @@ export function priceOf(plan: ReleasePlan, groups: bigint, blocks: number, setti
     if (settings.noise === 'gaussian') return refuse('setting.bad', { name: 'noise', value: 'gaussian', expected: 'laplace or auto: this account has no delta', sample: 'auto' })
     return refuse('budget.spent', { account: 'your', asked: `epsilon ${settings.epsilon.toDecimal(6, 'up')}`, left: 'no track of this account can bear it' })
   }
-  const taken = keepsPureTrack(plan, choice, settings, balance)
+  const taken = keepsPureTrack(plan, choice, settings, balances)
   const made = taken.candidate
   const persons = plan.groups.kind === 'selected' ? made.mechanisms[plan.groups.persons] : undefined
   check(!selects || persons !== undefined, 'selected groups have a mechanism for their person count')
@@ -65,13 +65,16 @@ interface Taken {
   readonly reason: string
 }
 
-/** 'auto' never makes an account's first Gaussian release where that lowers the number of default statements left: one Gaussian release closes the pure track. */
-function keepsPureTrack(plan: ReleasePlan, choice: Candidate & { readonly runnerUp: Candidate | null }, settings: SessionSettings, balance: Balance): Taken {
+/** 'auto' never makes an account's (the analyst's or everyone's) first Gaussian release where that lowers the number of default statements left: one Gaussian release closes the pure track. */
+function keepsPureTrack(plan: ReleasePlan, choice: Candidate & { readonly runnerUp: Candidate | null }, settings: SessionSettings, balances: readonly Balance[]): Taken {
   const { runnerUp } = choice
   if (settings.noise !== 'auto') return { candidate: choice, runnerUp, reason: `as set by hedgerow.noise` }
-  if (choice.kind === 'gaussian' && runnerUp !== null && balance.epsilonSpent !== null) {
-    const left = (noise: NoiseCharge): bigint => defaultStatementsLeft(after(balance, noise), plan.dataSet)
-    if (left(choice.charge) + 1n < left(runnerUp.charge)) return { candidate: runnerUp, runnerUp: choice, reason: 'a first Gaussian release would leave fewer default statements' }
+  if (choice.kind === 'gaussian' && runnerUp !== null) {
+    const loses = balances.some((balance) => {
+      const left = (noise: NoiseCharge): bigint => defaultStatementsLeft(after(balance, noise), plan.dataSet)
+      return balance.epsilonSpent !== null && left(choice.charge) + 1n < left(runnerUp.charge)
+    })
+    if (loses) return { candidate: runnerUp, runnerUp: choice, reason: 'a first Gaussian release would leave fewer default statements' }
   }
   return { candidate: choice, runnerUp, reason: runnerUp === null ? 'the only law this account can pay for' : 'the lesser variance at the same charge' }
 }

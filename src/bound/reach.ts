@@ -37,3 +37,9 @@ export function groupsTouched(plan: ReleasePlan, listed: bigint | null): bigint 
 export function reachesOf(plan: ReleasePlan, groups: bigint): readonly Reach[] {
   return plan.totals.map((total) => ({ groups, each: reachOf(total), coordinates: coordinatesOf(total) }))
 }
+
+/** How many groups a person's are cut down to; null where there is nothing to choose: one group by nature, or no more listed groups than a person may touch. */
+export function groupsToKeep(plan: ReleasePlan, listed: number | null): bigint | null {
+  if (plan.oneGroupByNature) return null
+  return listed !== null && BigInt(listed) <= plan.groupsPerPerson ? null : plan.groupsPerPerson
+}

@@ -75,6 +75,8 @@ async function demo(): Promise<void> {
     clock: systemClock,
     random: systemRandom,
     allowUnsafeLedger: true,
+    // the rows are invented: a slow machine should not pause the demo
+    overrunsADay: 1000,
   })
   closers.push(() => hedgerow.close())
   const url = `postgresql://ana:harbour@${settings.host}:${hedgerow.port.toString()}/ferries`

@@ -43,8 +43,8 @@ export interface HedgerowOptions {
   readonly random: RandomBytes
   /** For tests and the demo alone: a ledger on a server that may forget in a crash. */
   readonly allowUnsafeLedger?: boolean
-  /** How many replies later than their own instant an account may have within an hour before it is paused. */
-  readonly overrunsAnHour?: number
+  /** How many replies later than their own instant an account may have within a day before it is paused. */
+  readonly overrunsADay?: number
 }
 
 export interface Hedgerow {
@@ -69,7 +69,7 @@ export class PoliciesUnfit extends Error {
 
 const vaultPlaces = 8
 const vaultPlacesEach = 4
-const overrunsAnHour = 20
+const overrunsADay = 5
 const drainMs = 10_000
 
 /** Starts in the order in which each part needs the others, and undoes what it started where a later part fails. */
@@ -108,7 +108,7 @@ export async function startHedgerow(options: HedgerowOptions): Promise<Hedgerow>
       slots: createSlots(vaultPlaces, vaultPlacesEach),
       statements: createStatementLog(),
       lastAnswers: createLastAnswers(),
-      overruns: createOverruns(options.overrunsAnHour ?? overrunsAnHour, log),
+      overruns: createOverruns(options.overrunsADay ?? overrunsADay, log),
       deadlineMs: options.statementTimeoutMs,
       inForce: current,
     })
