@@ -20,6 +20,7 @@ const families: Readonly<Record<string, Family>> = {
   bool: 'bool',
   text: 'text',
   varchar: 'text',
+  caseless: 'text',
   bpchar: 'text',
   date: 'date',
   timestamp: 'timestamp',

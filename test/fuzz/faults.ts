@@ -1,5 +1,5 @@
 import { BoundedQuery } from '../../src/bound/bounded-query.ts'
-import { call, cast, integer, nothing, operator, when } from '../../src/catalog/build.ts'
+import { call, cast, integer, logic, nothing, operator, when } from '../../src/catalog/build.ts'
 import type { Scalar } from '../../src/catalog/scalar.ts'
 import type { ReleasePlan, Total } from '../../src/plan/release-plan.ts'
 import { printQuery } from '../../src/sql/print.ts'
@@ -163,7 +163,9 @@ function withoutPersonTest(asked: Asked): Query {
     const { where } = select
     if (where === null) return select
     if (isTest(where)) return { ...select, where: null }
-    return where.kind === 'logic' && where.word === 'and' ? { ...select, where: { ...where, args: where.args.filter((arg) => !isTest(arg)) } } : select
+    if (where.kind !== 'logic' || where.word !== 'and') return select
+    const rest = where.args.filter((arg) => !isTest(arg))
+    return { ...select, where: rest.length === 0 ? null : logic('and', rest) }
   })
 }
 

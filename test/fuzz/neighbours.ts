@@ -79,7 +79,8 @@ export class Harbour {
     for (const client of clients) await client.connect()
     await clients[0].query(settings)
     await clients[1].query(otherWays)
-    await clients[0].query(`CREATE SCHEMA fuzz_kinds; CREATE TYPE fuzz_kinds.sky AS ENUM ('fog', 'calm', 'gale')`)
+    await clients[0].query(`CREATE SCHEMA fuzz_kinds; CREATE TYPE fuzz_kinds.sky AS ENUM ('fog', 'calm', 'gale');
+       CREATE COLLATION fuzz_kinds.caseless (provider = icu, locale = 'und-u-ks-level2', deterministic = false)`)
     return new Harbour(...clients)
   }
 

@@ -29,6 +29,7 @@ export const pools = {
   },
   bool: { usual: ['true', 'false'], odd: ['true'] },
   text: { usual: ['', 'a', 'A', 'b', 'fog', 'calm'], odd: [' ', 'a ', "o'b", 'back\\slash\\', '%_%', '\t\n', 'ß', 'İ', '🦭', 'NULL', long, `${long}x`] },
+  caseless: { usual: ['a', 'A', 'b', 'B'], odd: ['', 'Ä', 'ß', 'ss'] },
   varchar: { usual: ['a', 'b', 'x'], odd: ['', 'x ', 'X', "';--"] },
   bpchar: { usual: ['a', 'b', 'x'], odd: ['', 'x  ', 'X'] },
   date: {

@@ -82,6 +82,7 @@ export function tablesOf(world: World): readonly FuzzTable[] {
         column('note', 'text'),
         column('code', 'bpchar'),
         column('wait', 'interval'),
+        column('shout', 'caseless'),
         column('tod', 'time'),
         column('token', 'uuid'),
       ],
@@ -166,6 +167,7 @@ const types: Readonly<Record<string, string>> = {
   serial: 'bigint',
   reference: 'bigint',
   sky: 'fuzz_kinds.sky',
+  caseless: 'text',
   float4: 'real',
 }
 
@@ -176,7 +178,9 @@ export function typeOf(world: World, kind: FuzzColumn['kind']): string {
 
 export function createSql(world: World, schema: string): string {
   const tables = tablesOf(world).map((table) => {
-    const columns = table.columns.map((each) => `${each.name} ${typeOf(world, each.kind)}${each.nullable ? '' : ' NOT NULL'}`)
+    const columns = table.columns.map(
+      (each) => `${each.name} ${typeOf(world, each.kind)}${each.kind === 'caseless' ? ' COLLATE fuzz_kinds.caseless' : ''}${each.nullable ? '' : ' NOT NULL'}`,
+    )
     return `CREATE UNLOGGED TABLE ${schema}.${table.name} (${[...columns, ...(table.constraints === '' ? [] : [table.constraints])].join(', ')});`
   })
   return `CREATE SCHEMA ${schema}; ${tables.join(' ')}`
@@ -223,6 +227,7 @@ tables:
       note: {}
       code: { values: [a, x] }
       wait: {}
+      shout: {}
       tod: {}
       token: {}
   legs:
