@@ -1,6 +1,6 @@
 import { check } from '../base/check.ts'
 import { refuse } from '../base/refusal.ts'
-import { printedType, scalarTypeOf, type ScalarType } from '../catalog/scalar-type.ts'
+import { printedParameter, scalarTypeOf, type ScalarType } from '../catalog/scalar-type.ts'
 import type { BlockTypes } from '../plan/rewrite.ts'
 import type { DataSet } from '../policy/data-set.ts'
 import type { Parser } from '../sql/parser.ts'
@@ -38,10 +38,10 @@ export function createDescriber(lobby: Lobby, parser: Parser): Describer {
   async function describe(dataSet: DataSet, text: string, parameterTypes: readonly number[]): Promise<BlockDescription> {
     const described = await lobby.describe(dataSet.name, text, parameterTypes)
     if (described.kind === 'complaint') return described
-    const parameters = described.parameters.map(printed => parameterType(printed, dataSet))
-    const columns = await Promise.all(described.columns.map(async column => ({ name: column.name, type: await typeRef(column.type) })))
+    const parameters = described.parameters.map((printed) => parameterType(printed, dataSet))
+    const columns = await Promise.all(described.columns.map(async (column) => ({ name: column.name, type: await typeRef(column.type) })))
     const types = { parameters: await Promise.all(described.parameters.map(typeRef)), columns }
-    return { kind: 'described', types, parameters, outputs: described.columns.map(column => column.type) }
+    return { kind: 'described', types, parameters, outputs: described.columns.map((column) => column.type) }
   }
 
   return {
@@ -63,7 +63,7 @@ export function createDescriber(lobby: Lobby, parser: Parser): Describer {
 }
 
 function parameterType(printed: string, dataSet: DataSet): ScalarType {
-  const known = printedType(printed)
+  const known = printedParameter(printed)
   if (known !== null) return known
   for (const table of dataSet.tables.values())
     for (const column of table.columns.values())

@@ -1,6 +1,20 @@
 import type { CatalogType } from './catalog.ts'
 
-export type Family = 'bool' | 'integer' | 'numeric' | 'float' | 'text' | 'date' | 'timestamp' | 'timestamptz' | 'time' | 'interval' | 'uuid' | 'enum' | 'unknown' | 'opaque'
+export type Family =
+  | 'bool'
+  | 'integer'
+  | 'numeric'
+  | 'float'
+  | 'text'
+  | 'date'
+  | 'timestamp'
+  | 'timestamptz'
+  | 'time'
+  | 'interval'
+  | 'uuid'
+  | 'enum'
+  | 'unknown'
+  | 'opaque'
 
 /** A type that an expression over private rows may have. */
 export interface ScalarType {
@@ -61,6 +75,17 @@ const printedNames: Readonly<Record<string, string>> = {
   'timestamp without time zone': 'timestamp',
   'timestamp with time zone': 'timestamptz',
   'time without time zone': 'time',
+}
+
+/** An array of a scalar type, named as PostgreSQL names it, for parameters: an expression may only look into it by ANY. */
+function arrayType(printed: string): ScalarType | null {
+  const element = printed.endsWith('[]') ? printedType(printed.slice(0, -2)) : null
+  return element === null ? null : { schema: 'pg_catalog', name: `_${element.name}`, family: 'opaque' }
+}
+
+/** The type of a parameter that format_type prints as `printed`: a scalar of pg_catalog or an array of one; null for any other. */
+export function printedParameter(printed: string): ScalarType | null {
+  return printedType(printed) ?? arrayType(printed)
 }
 
 /** The type that format_type prints as `printed` (modifiers dropped), or null where it is none of pg_catalog's scalars. */

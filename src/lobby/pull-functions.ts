@@ -109,7 +109,8 @@ BEGIN
       MESSAGE = format('the temporary relation %I hides the private table of the same name [names.hidden]', hiding),
       HINT = format('Drop or rename it: ALTER TABLE pg_temp.%I RENAME TO %I; or write the private table with its schema.', hiding, 'my_' || hiding);
   END IF;
-  IF jsonb_typeof(args) <> 'array' OR jsonb_path_exists(args, 'strict $[*] ? (@.type() == "array" || @.type() == "object")')
+  IF jsonb_typeof(args) <> 'array' OR jsonb_path_exists(args, 'strict $[*] ? (@.type() == "object")')
+     OR jsonb_path_exists(args, 'strict $[*] ? (@.type() == "array")[*] ? (@.type() == "array" || @.type() == "object")')
      OR jsonb_typeof(siblings) <> 'array' OR jsonb_path_exists(siblings, 'strict $[*] ? (@.type() != "string")') THEN
     RAISE EXCEPTION USING ERRCODE = '22023', MESSAGE = 'hedgerow.pull takes its arguments as a JSON array of values, and its siblings as one of texts',
       HINT = 'Write the statement itself: Hedgerow makes the call.';

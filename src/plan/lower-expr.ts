@@ -9,6 +9,7 @@ import { scalarType } from '../catalog/scalar-type.ts'
 import type { Expr } from '../sql/tree.ts'
 import type { Context } from './context.ts'
 import { aggregateNames } from './aggregates.ts'
+import { lowerAny } from './lower-any.ts'
 import { lowerCall } from './lower-call.ts'
 import { lowerConstant, lowerParameter } from './lower-constant.ts'
 import { lowerOperator } from './lower-operator.ts'
@@ -27,7 +28,9 @@ export function lowerExpr(expr: Expr, scope: Scope, context: Context): Scalar {
     }
     case 'parameter': {
       const parameter = context.parameters[expr.number - 1]
-      return parameter === undefined ? refuse('expr.unsupported', { what: `parameter $${String(expr.number)}` }, expr.at) : lowerParameter(parameter, expr.number, expr.at)
+      return parameter === undefined
+        ? refuse('expr.unsupported', { what: `parameter $${String(expr.number)}` }, expr.at)
+        : lowerParameter(parameter, expr.number, expr.at)
     }
     case 'constant':
       return lowerConstant(expr.constant, expr.at)
@@ -60,10 +63,8 @@ export function lowerExpr(expr: Expr, scope: Scope, context: Context): Scalar {
     case 'like':
       if (expr.word === 'similar') refuse('expr.unsupported', { what: 'SIMILAR TO' }, expr.at)
       return like(expr.word, deterministic(lower(expr.arg), context, expr.at), lower(expr.pattern), expr.negated, expr.at)
-    case 'quantified': {
-      if (expr.right.kind !== 'array' || expr.all || expr.name.at(-1) !== '=') refuse('expr.unsupported', { what: 'this form of ANY or ALL' }, expr.at)
-      return inList(lower(expr.left), expr.right.items.map(lower), false, expr.at)
-    }
+    case 'quantified':
+      return lowerAny(expr, lower, context)
     case 'nullif':
       return nullIf(lower(expr.left), lower(expr.right), expr.at)
     case 'cast': {
@@ -73,7 +74,7 @@ export function lowerExpr(expr: Expr, scope: Scope, context: Context): Scalar {
     case 'case': {
       const arg = expr.arg
       const subject = arg === null ? null : lower(arg)
-      const whens = expr.whens.map(each => ({
+      const whens = expr.whens.map((each) => ({
         when: subject === null ? truth(lower(each.when)) : compare('=', subject, lower(each.when), expr.at),
         then: lower(each.then),
       }))
@@ -105,7 +106,8 @@ function deterministic(scalar: Scalar, context: Context, at: number): Scalar {
   for (const part of parts(scalar)) {
     if (part.node.kind !== 'column') continue
     const { scan, column } = part.node
-    if (context.scans.find(each => each.index === scan)?.table.columns.get(column)?.deterministic === false) refuse('expr.unsupported', { what: 'LIKE under a nondeterministic collation' }, at)
+    if (context.scans.find((each) => each.index === scan)?.table.columns.get(column)?.deterministic === false)
+      refuse('expr.unsupported', { what: 'LIKE under a nondeterministic collation' }, at)
   }
   return scalar
 }

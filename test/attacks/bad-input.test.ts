@@ -151,7 +151,7 @@ test('hedgerow.pull called by hand is answered as the statement would be, or say
   for (const call of [
     "NULL, NULL, '[1,2]'",
     "'SELECT count(*) FROM riders', '{}'",
-    "'SELECT count(*) FROM riders', '[[1]]'",
+    "'SELECT count(*) FROM riders', '[[[1]]]'",
     "'SELECT count(*) FROM riders', '[]', '{}'",
   ]) {
     expect([call, (await refusal(`SELECT hedgerow.pull(${call})`)).code]).toEqual([call, '22023'])
