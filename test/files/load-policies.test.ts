@@ -59,7 +59,7 @@ describe('loading policies', () => {
       personCalled: 'rider',
       personTable: 'public.riders',
       personColumn: 'rider_id',
-      replyAfterMs: 300,
+      replyAfterMs: 1000,
       defaults: { epsilon: '0.1', delta: '1e-8' },
       hasUndeclaredKeys: true,
     })
