@@ -10,7 +10,14 @@ if (!/^[1-9]\d{0,8}$/.test(cases)) {
 const root = fileURLToPath(new URL('..', import.meta.url))
 const { status } = spawnSync(
   process.execPath,
-  ['node_modules/vitest/vitest.mjs', 'run', '--config', '.config/vitest.config.ts', '--testTimeout=0', '--dir', 'test/fuzz', '--passWithNoTests', ...filters],
+  [
+    'node_modules/vitest/vitest.mjs',
+    'run',
+    '--config',
+    '.config/vitest.config.ts',
+    '--testTimeout=0',
+    ...(filters.length === 0 ? [''] : filters).map((filter) => `test/fuzz/${filter}`),
+  ],
   { cwd: root, stdio: 'inherit', env: { ...process.env, HEDGEROW_TEST_CASES: cases } },
 )
 process.exit(status ?? 1)

@@ -177,51 +177,55 @@ test.each([
   expect(found).toEqual([])
 })
 
-test('one person moves no more groups, and none further, than the plan states; no query raises; whatever the data', { timeout: 300_000 }, async () => {
-  const wanted = caseCount(1000)
-  const fuzzing = wanted > 1000
-  const shapes = new Map<string, { asked: number; accepted: number }>()
-  let [cases, accepted, asked] = [0, 0, 0]
-  for (let round = 0; cases < wanted; round += 1) {
-    const world = worlds[round % worlds.length] ?? { person: 'int4', orphans: true }
-    const random = seeded(fuzzing ? Date.now() + round : round + 1)
-    const rows = rowsOf(world, random, round % 9 === 4 ? 330 : random.pick([0, 8, 45]))
-    const persons = someOf(world, rows, random)
-    const loaded = await harbour.load(world, rows, persons)
-    const enough = cases + Math.max(90, Math.ceil(wanted / worlds.length / 20))
-    while (cases < Math.min(wanted, enough)) {
-      const statement = statementOf(world, random)
-      const [limits, timeZone] = [limitsFrom(random), random.pick(timeZones)]
-      const salts = Array.from({ length: 5 }, random.salt)
-      const fault = await faultOf(sqlOf(statement), loaded, timeZone, limits, repeating(salts), () => (cases += 1))
-      const shape = shapes.get(statement.shape) ?? { asked: 0, accepted: 0 }
-      shapes.set(statement.shape, shape)
-      asked += 1
-      shape.asked += 1
-      if (fault === 'refused') continue
-      accepted += 1
-      shape.accepted += 1
-      if (fault === null) continue
-      const kept = {
-        world,
-        rows: named(world, rows),
-        who: null,
-        timeZone,
-        groups: limits.groups?.toString() ?? null,
-        rowLimit: limits.rows?.toString() ?? null,
-        salts: salts.map(String),
+test(
+  'one person moves no more groups, and none further, than the plan states; no query raises; whatever the data',
+  { timeout: process.env['HEDGEROW_TEST_CASES'] === undefined ? 300_000 : 0 },
+  async () => {
+    const wanted = caseCount(1000)
+    const fuzzing = wanted > 1000
+    const shapes = new Map<string, { asked: number; accepted: number }>()
+    let [cases, accepted, asked] = [0, 0, 0]
+    for (let round = 0; cases < wanted; round += 1) {
+      const world = worlds[round % worlds.length] ?? { person: 'int4', orphans: true }
+      const random = seeded(fuzzing ? Date.now() + round : round + 1)
+      const rows = rowsOf(world, random, round % 9 === 4 ? 330 : random.pick([0, 8, 45]))
+      const persons = someOf(world, rows, random)
+      const loaded = await harbour.load(world, rows, persons)
+      const enough = cases + Math.max(90, Math.ceil(wanted / worlds.length / 20))
+      while (cases < Math.min(wanted, enough)) {
+        const statement = statementOf(world, random)
+        const [limits, timeZone] = [limitsFrom(random), random.pick(timeZones)]
+        const salts = Array.from({ length: 5 }, random.salt)
+        const fault = await faultOf(sqlOf(statement), loaded, timeZone, limits, repeating(salts), () => (cases += 1))
+        const shape = shapes.get(statement.shape) ?? { asked: 0, accepted: 0 }
+        shapes.set(statement.shape, shape)
+        asked += 1
+        shape.asked += 1
+        if (fault === 'refused') continue
+        accepted += 1
+        shape.accepted += 1
+        if (fault === null) continue
+        const kept = {
+          world,
+          rows: named(world, rows),
+          who: null,
+          timeZone,
+          groups: limits.groups?.toString() ?? null,
+          rowLimit: limits.rows?.toString() ?? null,
+          salts: salts.map(String),
+        }
+        expect.fail(await keep(fault, statement, kept, persons))
       }
-      expect.fail(await keep(fault, statement, kept, persons))
+      await harbour.drop(loaded)
     }
-    await harbour.drop(loaded)
-  }
-  if (fuzzing)
-    console.log(
-      `${cases.toString()} cases; accepted by shape: ${[...shapes].map(([name, { asked: all, accepted: some }]) => `${name} ${some.toString()}/${all.toString()}`).join(', ')}`,
-    )
-  expect(accepted / asked, 'statements that are accepted').toBeGreaterThan(0.5)
-  for (const [name, shape] of shapes) if (shape.asked >= 25) expect(shape.accepted, `statements of the shape ${name} that are accepted`).toBeGreaterThan(0)
-})
+    if (fuzzing)
+      console.log(
+        `${cases.toString()} cases; accepted by shape: ${[...shapes].map(([name, { asked: all, accepted: some }]) => `${name} ${some.toString()}/${all.toString()}`).join(', ')}`,
+      )
+    expect(accepted / asked, 'statements that are accepted').toBeGreaterThan(0.5)
+    for (const [name, shape] of shapes) if (shape.asked >= 25) expect(shape.accepted, `statements of the shape ${name} that are accepted`).toBeGreaterThan(0)
+  },
+)
 
 describe('the check sees what it is for', () => {
   const most = 600
