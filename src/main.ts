@@ -9,7 +9,7 @@ import { onStopSignal } from './serve/stop-signal.ts'
 import { lineLog, systemClock, systemRandom } from './serve/system.ts'
 import { readSettings, SettingsError } from './settings.ts'
 
-const log = lineLog(line => process.stdout.write(line))
+const log = lineLog((line) => process.stdout.write(line))
 const closers: (() => Promise<void>)[] = []
 
 /** Ends in the reverse of the start's order: sessions first, servers last. */
@@ -46,7 +46,11 @@ async function serve(): Promise<Hedgerow> {
     random: systemRandom,
   })
   closers.push(() => hedgerow.close())
-  const watch = watchPolicies(settings.policies, () => void hedgerow.reload(), code => log('error', 'policy.watch', { code }))
+  const watch = watchPolicies(
+    settings.policies,
+    () => void hedgerow.reload(),
+    (code) => log('error', 'policy.watch', { code }),
+  )
   closers.push(() => Promise.resolve(watch.close()))
   process.on('SIGHUP', () => void hedgerow.reload())
   log('info', 'serve.ready', { host: settings.host, port: hedgerow.port })
@@ -61,7 +65,8 @@ onStopSignal((signal) => {
 try {
   await serve()
 } catch (problem) {
-  const lines = problem instanceof SettingsError || problem instanceof PoliciesUnfit ? problem.complaints : [problem instanceof Error ? problem.message : 'unknown problem']
+  const lines =
+    problem instanceof SettingsError || problem instanceof PoliciesUnfit ? problem.complaints : [problem instanceof Error ? problem.message : 'unknown problem']
   for (const line of lines) log('error', 'serve.cannot_start', { text: line })
   await stop(1)
 }

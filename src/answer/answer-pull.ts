@@ -62,14 +62,22 @@ async function answerBlock(request: PullRequest, signal: AbortSignal, parts: Pul
   const settings = readSessionSettings(request.settings, dataSet)
   const block = await planText(request.text, request, dataSet, settings.limits, parts.parser, parts.describer)
   const prepared = await prepare(block.plan, request.timeZone, parts.lobby)
-  if (block.plan.totals.length === 0) return rows((prepared.listed ?? []).map(keys => rowOf(block.labels, block.plan.columns.map(column => keys[column.index] ?? null))))
+  if (block.plan.totals.length === 0)
+    return rows(
+      (prepared.listed ?? []).map((keys) =>
+        rowOf(
+          block.labels,
+          block.plan.columns.map((column) => keys[column.index] ?? null),
+        ),
+      ),
+    )
   const balances = await parts.ledger.balances([accounts.analyst, accounts.everyone])
   const [balance] = balances
   if (balance === undefined) throw new Failure('ledger')
   const price = priceOf(block.plan, prepared.groups, sharesOf(request), settings, accounts.analyst, balance, balances)
   const given = await give(block, prepared, price, accounts, settings, request, parts, signal)
   parts.lastAnswers.add(request, outputsOf(block, price, prepared, settings, given))
-  return { kind: 'rows', rows: given.table.rows.map(row => rowOf(block.labels, row)), notice: noticeOf(block, given, settings, price) }
+  return { kind: 'rows', rows: given.table.rows.map((row) => rowOf(block.labels, row)), notice: noticeOf(block, given, settings, price) }
 }
 
 function rowOf(labels: readonly string[], values: readonly (string | null)[]): Readonly<Record<string, string | null>> {
@@ -100,5 +108,7 @@ function failureReply(failure: Failure): PullReply {
 /** An error that PostgreSQL raised in the lobby: it speaks of published data and the statement's own values only. */
 function lobbyComplaint(problem: unknown): PullReply | null {
   if (!(problem instanceof Error) || !('code' in problem) || !('severity' in problem) || typeof problem.code !== 'string') return null
-  return /^22|^42/.test(problem.code) ? { kind: 'error', sqlstate: problem.code, message: problem.message, hint: 'The statement’s own values cause this, whatever the rows are.' } : null
+  return /^22|^42/.test(problem.code)
+    ? { kind: 'error', sqlstate: problem.code, message: problem.message, hint: 'The statement’s own values cause this, whatever the rows are.' }
+    : null
 }

@@ -21,7 +21,7 @@ const closed: Readonly<Record<string, string>> = {
 
 /** Private tables a statement names, as far as the parser sees them. */
 export function privateTables(placed: Placed, dataSet: DataSet): readonly PrivateTable[] {
-  return placed.relations.flatMap(name => {
+  return placed.relations.flatMap((name) => {
     const table = findTable(dataSet, name)
     return table?.kind === 'private' ? [table] : []
   })

@@ -44,7 +44,7 @@ export function createGate(parts: GateParts): Gate {
       const dataSet = dataSetOf(parts.inForce(), database)
       return dataSet !== null && testOf(dataSet)(text)
     },
-    judge: async request => {
+    judge: async (request) => {
       const dataSet = dataSetOf(parts.inForce(), request.database)
       return dataSet === null ? { kind: 'untouched' } : judge(request, dataSet, testOf(dataSet), parts)
     },
@@ -55,7 +55,10 @@ async function judge(request: GateRequest, dataSet: DataSet, mentions: Mention, 
   const refusals: { readonly marker: string; readonly refusal: GateRefusal }[] = []
   const refused = (refusal: Refusal): string => {
     const marker = parts.marker()
-    refusals.push({ marker, refusal: { sqlstate: refusal.sqlstate, message: refusal.message, hint: refusal.hint, position: positionOf(request.text, refusal.at) } })
+    refusals.push({
+      marker,
+      refusal: { sqlstate: refusal.sqlstate, message: refusal.message, hint: refusal.hint, position: positionOf(request.text, refusal.at) },
+    })
     return refusedText(marker)
   }
   let outcome
@@ -66,7 +69,7 @@ async function judge(request: GateRequest, dataSet: DataSet, mentions: Mention, 
     return { kind: 'rewritten', text: refused(problem), refusals }
   }
   if (outcome.kind === 'syntax-error') return { kind: 'untouched' }
-  if (!request.standardConformingStrings && /\\|U&'/i.test(request.text) && outcome.statements.some(placed => privateTables(placed, dataSet).length > 0))
+  if (!request.standardConformingStrings && /\\|U&'/i.test(request.text) && outcome.statements.some((placed) => privateTables(placed, dataSet).length > 0))
     return { kind: 'rewritten', text: refused(new Refusal('text.backslash', {}, -1)), refusals }
   const bytes = Buffer.from(request.text, 'utf8')
   const pieces: string[] = []
@@ -84,7 +87,15 @@ async function judge(request: GateRequest, dataSet: DataSet, mentions: Mention, 
 }
 
 /** The text to put in a statement's place, or null where it goes on as it is. */
-async function judgeStatement(placed: ReadStatement, slice: Buffer, request: GateRequest, dataSet: DataSet, mentions: Mention, parts: GateParts, refused: (refusal: Refusal) => string): Promise<string | null> {
+async function judgeStatement(
+  placed: ReadStatement,
+  slice: Buffer,
+  request: GateRequest,
+  dataSet: DataSet,
+  mentions: Mention,
+  parts: GateParts,
+  refused: (refusal: Refusal) => string,
+): Promise<string | null> {
   const tables = privateTables(placed, dataSet)
   try {
     refuseClosed(placed, tables, mentions(slice), dataSet)
@@ -107,14 +118,14 @@ async function rewrite(placed: ReadStatement, text: string, request: GateRequest
   const cut = cutStatement(statement, dataSet)
   const types: BlockTypes[] = []
   for (const block of cut.blocks) {
-    const oids = block.parameters.map(number => request.parameterTypes[number - 1] ?? 0)
+    const oids = block.parameters.map((number) => request.parameterTypes[number - 1] ?? 0)
     const description = await parts.describer.block(dataSet, blockText(block, { parameters: [], columns: [] }), oids)
     if (description.kind === 'complaint') {
       // other commands are analysed when they run: PostgreSQL says then what is wrong
       if (!analysed.has(statement.kind) || (await parts.describer.complaint(dataSet, text, request.parameterTypes))) return null
       return refuseCorrelated(block, description.message, dataSet)
     }
-    const parameters = description.parameters.map(type => ({ type, value: undefined }))
+    const parameters = description.parameters.map((type) => ({ type, value: undefined }))
     planBlock(block.query, { dataSet, parameters, now: someInstant, timeZone: 'UTC', commonTables: new Map(), scans: [] }, noLimits)
     types.push(description.types)
   }

@@ -30,7 +30,7 @@ export function marginText(value: Fraction, total: Total): string {
 }
 
 export function tablesOf(plan: ReleasePlan): readonly string[] {
-  const names = plan.scans.flatMap(scan => (scan.table.kind === 'listed' ? [] : [typedName(plan.dataSet, scan.table)]))
+  const names = plan.scans.flatMap((scan) => (scan.table.kind === 'listed' ? [] : [typedName(plan.dataSet, scan.table)]))
   return [...new Set(names)]
 }
 

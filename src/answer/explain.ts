@@ -34,7 +34,8 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
   const settings = readSessionSettings(request.settings, dataSet)
   const outcome = await parts.parser.readText(request.text)
   const placed = outcome.kind === 'read' ? outcome.statements[0] : undefined
-  if (placed === undefined || placed.refusal !== null || placed.statement.kind !== 'explain') return refuse('block.shape', { what: 'EXPLAIN of anything but one statement that can be read' })
+  if (placed === undefined || placed.refusal !== null || placed.statement.kind !== 'explain')
+    return refuse('block.shape', { what: 'EXPLAIN of anything but one statement that can be read' })
   const cut = cutStatement(placed.statement.statement, dataSet)
   const balances = await parts.ledger.balances([accounts.analyst, accounts.everyone])
   const [balance] = balances
@@ -43,10 +44,28 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
     const description = await parts.describer.block(dataSet, printed(each), [])
     if (description.kind === 'complaint') return { kind: 'error', sqlstate: description.sqlstate, message: description.message, hint: '' }
     const text = blockText(each, description.types)
-    const block = await planText(text, { args: each.parameters.map(number => request.args[number - 1] ?? null), now: request.now, timeZone: request.timeZone }, dataSet, settings.limits, parts.parser, parts.describer)
+    const block = await planText(
+      text,
+      { args: each.parameters.map((number) => request.args[number - 1] ?? null), now: request.now, timeZone: request.timeZone },
+      dataSet,
+      settings.limits,
+      parts.parser,
+      parts.describer,
+    )
     const prepared = await prepare(block.plan, request.timeZone, parts.lobby)
-    const price = balance === undefined ? refuse('account.closed', { user: request.user, dataset: dataSet.name }) : priceOf(block.plan, prepared.groups, cut.blocks.length, settings, accounts.analyst, balance, balances)
-    explained.push({ block, prepared, price, sql: BoundedQuery.of(block.plan, prepared.fixed, { keep: groupsToKeep(block.plan, prepared.listed?.length ?? null), salts: Array.from({ length: block.plan.keys.length + 1 }, () => 0n) }).text })
+    const price =
+      balance === undefined
+        ? refuse('account.closed', { user: request.user, dataset: dataSet.name })
+        : priceOf(block.plan, prepared.groups, cut.blocks.length, settings, accounts.analyst, balance, balances)
+    explained.push({
+      block,
+      prepared,
+      price,
+      sql: BoundedQuery.of(block.plan, prepared.fixed, {
+        keep: groupsToKeep(block.plan, prepared.listed?.length ?? null),
+        salts: Array.from({ length: block.plan.keys.length + 1 }, () => 0n),
+      }).text,
+    })
   }
   const verbose = wants(placed.statement, 'verbose')
   const lines = explained.flatMap((each, i) => linesOf(each, i, explained.length, settings, balance, verbose))
@@ -59,16 +78,21 @@ function printed(each: Parameters<typeof blockText>[0]): string {
 }
 
 function wants(statement: Extract<Statement, { kind: 'explain' }>, name: string): boolean {
-  const option = statement.options.find(each => each.name === name)
+  const option = statement.options.find((each) => each.name === name)
   if (option === undefined) return false
   const value = option.value
-  return value === null || (value.kind === 'boolean' && value.value) || (value.kind === 'string' && ['true', 'on'].includes(value.value)) || (value.kind === 'integer' && value.value === '1')
+  return (
+    value === null ||
+    (value.kind === 'boolean' && value.value) ||
+    (value.kind === 'string' && ['true', 'on'].includes(value.value)) ||
+    (value.kind === 'integer' && value.value === '1')
+  )
 }
 
 function jsonOrText(statement: Extract<Statement, { kind: 'explain' }>, lines: readonly string[]): readonly Readonly<Record<string, string>>[] {
-  const format = statement.options.find(each => each.name === 'format')?.value
+  const format = statement.options.find((each) => each.name === 'format')?.value
   if (format?.kind === 'string' && format.value === 'json') return [{ c1: JSON.stringify([{ Plan: { 'Node Type': 'Release', Lines: lines } }], null, 2) }]
-  return lines.map(c1 => ({ c1 }))
+  return lines.map((c1) => ({ c1 }))
 }
 
 function linesOf(each: Explained, i: number, count: number, settings: SessionSettings, balance: Balance | undefined, verbose: boolean): readonly string[] {
@@ -91,7 +115,13 @@ function linesOf(each: Explained, i: number, count: number, settings: SessionSet
     ]
   })
   const why = `  Noise law: ${price.kind}, ${price.reason}${price.runnerUp === null ? '' : `; ${price.runnerUp.kind} would have ${ratio(price)} times its relative variance`}`
-  const left = balance === undefined ? [] : [`  Left before it: ${leftText(balance)}`, `  Like it, in all: ${!price.charge.rho.isPositive() ? 'without end' : timesLeft(balance.cap, { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }, price.charge).toString()}`]
+  const left =
+    balance === undefined
+      ? []
+      : [
+          `  Left before it: ${leftText(balance)}`,
+          `  Like it, in all: ${!price.charge.rho.isPositive() ? 'without end' : timesLeft(balance.cap, { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }, price.charge).toString()}`,
+        ]
   const charged = price.mechanisms.length === 0 ? ['  Charge: none'] : [why, `  Charge: ${chargeText(price.charge)}`, ...left]
   return [head, `  Groups: ${groupsText(each)}`, ...capsText(each), ...outputs, ...charged, ...(verbose ? [`  Vault: ${each.sql}`] : [])]
 }
@@ -117,5 +147,5 @@ function groupsText(each: Explained): string {
 
 function capsText(each: Explained): readonly string[] {
   const caps = [...each.block.plan.fanOut.capped.values()]
-  return caps.length === 0 ? [] : [`  Joins: at most ${caps.map(cap => cap.toString()).join(' and ')} rows of a person from each joined table`]
+  return caps.length === 0 ? [] : [`  Joins: at most ${caps.map((cap) => cap.toString()).join(' and ')} rows of a person from each joined table`]
 }

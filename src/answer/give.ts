@@ -56,7 +56,16 @@ export interface Given {
 }
 
 /** Debits, asks the vault, releases, stores, and waits for the reply's instant. In that order and no other. */
-export async function give(block: PlannedBlock, prepared: Prepared, price: Price, accounts: Accounts, settings: SessionSettings, request: PullRequest, parts: GiveParts, signal: AbortSignal): Promise<Given> {
+export async function give(
+  block: PlannedBlock,
+  prepared: Prepared,
+  price: Price,
+  accounts: Accounts,
+  settings: SessionSettings,
+  request: PullRequest,
+  parts: GiveParts,
+  signal: AbortSignal,
+): Promise<Given> {
   const { plan } = block
   const query = await boundedQuery(plan, prepared, parts)
   const giveBack = await parts.slots.take(accounts.analyst.id, signal)
@@ -68,7 +77,13 @@ export async function give(block: PlannedBlock, prepared: Prepared, price: Price
     const classes = timeClasses(plan, parts.deadlineMs)
     const work = (async (): Promise<ReleasedTable> => {
       const exact = await parts.vault.ask(query, { timeZone: request.timeZone, deadlineMs: parts.deadlineMs, signal })
-      const order = { plan, mechanisms: price.mechanisms, listed: prepared.listed, threshold: price.threshold, show: { confidence: settings.confidence, nonnegative: settings.nonnegative } }
+      const order = {
+        plan,
+        mechanisms: price.mechanisms,
+        listed: prepared.listed,
+        threshold: price.threshold,
+        show: { confidence: settings.confidence, nonnegative: settings.nonnegative },
+      }
       const table = release(exact, debitFrom(outcome), order, new BitSource(parts.random))
       await parts.ledger.store(table.id, JSON.stringify({ columns: block.labels, rows: table.rows }))
       return table
@@ -93,19 +108,32 @@ const vaultTextBytes = 1_048_576
 
 /** The bounded SQL, held against the tree it was printed from before anything is debited: parsed and read again, it is that tree. */
 async function boundedQuery(plan: ReleasePlan, prepared: Prepared, parts: GiveParts): Promise<BoundedQuery> {
-  const query = BoundedQuery.of(plan, prepared.fixed, { keep: groupsToKeep(plan, prepared.listed?.length ?? null), salts: freshSalts(plan.keys.length + 1, parts.random) })
+  const query = BoundedQuery.of(plan, prepared.fixed, {
+    keep: groupsToKeep(plan, prepared.listed?.length ?? null),
+    salts: freshSalts(plan.keys.length + 1, parts.random),
+  })
   const outcome = await parts.parser.readText(query.text, vaultTextBytes)
   const read = outcome.kind === 'read' && outcome.statements.length === 1 ? outcome.statements[0] : undefined
-  check(read !== undefined && read.refusal === null && read.statement.kind === 'query' && sameTree(read.statement.query, query.tree), "the vault's SQL reads as the tree it was printed from")
+  check(
+    read !== undefined && read.refusal === null && read.statement.kind === 'query' && sameTree(read.statement.query, query.tree),
+    "the vault's SQL reads as the tree it was printed from",
+  )
   return query
 }
 
 /** Fresh and secret: 64 bits for the person and for each key. */
 export function freshSalts(count: number, random: RandomBytes): readonly bigint[] {
-  return Array.from({ length: count }, () => random(8).reduce((salt, byte) => (salt << 8n) | BigInt(byte), 0n)).map(salt => BigInt.asIntN(64, salt))
+  return Array.from({ length: count }, () => random(8).reduce((salt, byte) => (salt << 8n) | BigInt(byte), 0n)).map((salt) => BigInt.asIntN(64, salt))
 }
 
-async function debit(plan: ReleasePlan, prepared: Prepared, price: Price, accounts: Accounts, request: PullRequest, parts: GiveParts): ReturnType<typeof debited> {
+async function debit(
+  plan: ReleasePlan,
+  prepared: Prepared,
+  price: Price,
+  accounts: Accounts,
+  request: PullRequest,
+  parts: GiveParts,
+): ReturnType<typeof debited> {
   const remaining = sharesOf(request) > 1 ? parts.statements.remaining(request) : 0
   const reserve = remaining === 0 ? null : times(price.charge, remaining)
   const note = {
@@ -124,9 +152,13 @@ async function debit(plan: ReleasePlan, prepared: Prepared, price: Price, accoun
 async function debited(accounts: Accounts, charge: Charge, reserve: Charge | null, note: Parameters<Ledger['debit']>[3], parts: GiveParts) {
   const outcome = await parts.ledger.debit([accounts.analyst, accounts.everyone], charge, reserve, note)
   if (outcome.kind === 'debited') return outcome
-  const balance = outcome.balances.find(each => each.account === outcome.account)
+  const balance = outcome.balances.find((each) => each.account === outcome.account)
   const asked = reserve === null ? charge : sum(charge, reserve)
-  return refuse('budget.spent', { account: accountCalled(outcome.account), asked: asked.epsilon === null ? `rho ${figure(asked.rho)}` : `epsilon ${figure(asked.epsilon)}`, left: balance === undefined ? 'nothing is left' : leftText(balance) })
+  return refuse('budget.spent', {
+    account: accountCalled(outcome.account),
+    asked: asked.epsilon === null ? `rho ${figure(asked.rho)}` : `epsilon ${figure(asked.epsilon)}`,
+    left: balance === undefined ? 'nothing is left' : leftText(balance),
+  })
 }
 
 /** What is left on both tracks, for people. */
@@ -153,17 +185,26 @@ function sum(a: Charge, b: Charge): Charge {
 
 /** The plan's own print, without the salts' values or the statement's: it says whether two releases asked the same thing. */
 function fingerprintOf(request: PullRequest, plan: ReleasePlan): string {
-  return createHash('sha256').update(JSON.stringify([plan.dataSet.policyHash, request.text.replace(/'(?:[^']|'')*'|\b\d+(\.\d+)?\b/g, '?')])).digest('hex')
+  return createHash('sha256')
+    .update(JSON.stringify([plan.dataSet.policyHash, request.text.replace(/'(?:[^']|'')*'|\b\d+(\.\d+)?\b/g, '?')]))
+    .digest('hex')
 }
 
 /**
  * INVARIANT QUIET: the outcome, answer or failure, is handed on at the first instant of the plan's classes at which it is ready; a later one than the first is counted.
  * An abort ends the wait at once.
  */
-async function atItsInstant(work: Promise<ReleasedTable>, start: number, classes: readonly number[], account: string, parts: GiveParts, signal: AbortSignal): Promise<ReleasedTable> {
+async function atItsInstant(
+  work: Promise<ReleasedTable>,
+  start: number,
+  classes: readonly number[],
+  account: string,
+  parts: GiveParts,
+  signal: AbortSignal,
+): Promise<ReleasedTable> {
   let settled: { readonly table: ReleasedTable } | { readonly failure: Failure } | null = null
   const done = work.then(
-    table => (settled = { table }),
+    (table) => (settled = { table }),
     (problem: unknown) => (settled = { failure: problem instanceof Failure ? problem : signal.aborted ? new Failure('internal') : broken(problem, parts.log) }),
   )
   for (const [i, classMs] of classes.entries()) {
@@ -188,4 +229,3 @@ function broken(problem: unknown, log: Log): Failure {
   log('error', 'answer.broken', { reference: failure.reference, check: problem instanceof BrokenCheck ? problem.message : 'unexpected' })
   return failure
 }
-

@@ -38,6 +38,6 @@ export function createLastAnswers(): LastAnswers {
       const same = before !== undefined && before.statement === request.statement
       sessions.set(key, { statement: request.statement, outputs: same ? [...before.outputs, ...outputs] : outputs })
     },
-    of: request => sessions.get(keyOf(request))?.outputs ?? [],
+    of: (request) => sessions.get(keyOf(request))?.outputs ?? [],
   }
 }

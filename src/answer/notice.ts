@@ -23,7 +23,7 @@ export function percent(confidence: Fraction): string {
 
 /** One NOTICE after a release: what was spent, what is left, the margins. The views say the same. */
 export function noticeOf(block: PlannedBlock, given: Given, settings: SessionSettings, price: Price): string {
-  const own = given.balances.find(balance => !balance.account.endsWith('/everyone'))
+  const own = given.balances.find((balance) => !balance.account.endsWith('/everyone'))
   const margins = block.plan.columns.flatMap((column, i) => {
     if (column.kind !== 'output') return []
     const text = marginOf(block, given, column.index)

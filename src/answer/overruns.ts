@@ -11,7 +11,7 @@ const windowMs = 86_400_000
 /** An account is paused while it has more than `most` overruns within a day. */
 export function createOverruns(most: number, log: Log): Overruns {
   const times = new Map<string, readonly number[]>()
-  const recent = (account: string, at: number): readonly number[] => (times.get(account) ?? []).filter(time => time > at - windowMs)
+  const recent = (account: string, at: number): readonly number[] => (times.get(account) ?? []).filter((time) => time > at - windowMs)
   return {
     count: (account, at) => {
       const all = [...recent(account, at), at]

@@ -27,16 +27,29 @@ export interface BlockValues {
 /**
  * Reads a block's text as anybody may hand it to hedgerow.pull: untrusted. It is read, described and planned exactly as when it was cut out of a statement.
  */
-export async function planText(text: string, values: BlockValues, dataSet: DataSet, limits: Limits, parser: Parser, describer: Describer): Promise<PlannedBlock> {
+export async function planText(
+  text: string,
+  values: BlockValues,
+  dataSet: DataSet,
+  limits: Limits,
+  parser: Parser,
+  describer: Describer,
+): Promise<PlannedBlock> {
   const query = await readBlock(text, dataSet, parser)
   const description = await describer.block(dataSet, text, [])
-  if (description.kind === 'complaint') return refuse('block.shape', { what: 'a text that PostgreSQL itself complains about', example: exampleFor(dataSet, query) })
-  if (description.parameters.length > values.args.length) return refuse('block.shape', { what: 'a block with fewer arguments than parameters', example: exampleFor(dataSet, query) })
+  if (description.kind === 'complaint')
+    return refuse('block.shape', { what: 'a text that PostgreSQL itself complains about', example: exampleFor(dataSet, query) })
+  if (description.parameters.length > values.args.length)
+    return refuse('block.shape', { what: 'a block with fewer arguments than parameters', example: exampleFor(dataSet, query) })
   const parameters = description.parameters.map((type, i) => ({ type, value: argument(values.args[i]) }))
   const context = { dataSet, parameters, now: values.now, timeZone: values.timeZone, commonTables: new Map(), scans: [] }
   const plan = planBlock(query, context, limits)
   const body = query.body
-  return { plan, labels: body.kind === 'select' ? body.targets.map(labelOf) : [], calls: body.kind === 'select' ? body.targets.map(target => target.value) : [] }
+  return {
+    plan,
+    labels: body.kind === 'select' ? body.targets.map(labelOf) : [],
+    calls: body.kind === 'select' ? body.targets.map((target) => target.value) : [],
+  }
 }
 
 async function readBlock(text: string, dataSet: DataSet, parser: Parser): Promise<Query> {

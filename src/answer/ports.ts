@@ -19,7 +19,13 @@ export interface Lobby {
    * Rows of a query over published data, read-only, every value as text. `ceiling` rows at the most: one more and the reply is 'too-many'.
    * `timeZone` is set for the transaction.
    */
-  published(dataSet: string, text: string, values: readonly (string | null)[], timeZone: string, ceiling: number): Promise<readonly (readonly (string | null)[])[] | 'too-many'>
+  published(
+    dataSet: string,
+    text: string,
+    values: readonly (string | null)[],
+    timeZone: string,
+    ceiling: number,
+  ): Promise<readonly (readonly (string | null)[])[] | 'too-many'>
 }
 
 /** One call of the lobby's hedgerow.* functions over the pull port: untrusted text under a session_user the lobby vouches for. */

@@ -28,18 +28,36 @@ export interface Price {
  * The price of one of `blocks` equal shares of a statement's epsilon. A function of plan, settings and account alone. INVARIANT STATIC; INVARIANT CALIBRATED:
  * the sensitivities are the plan's own.
  */
-export function priceOf(plan: ReleasePlan, groups: bigint, blocks: number, settings: SessionSettings, account: Account, balance: Balance, balances: readonly Balance[]): Price {
+export function priceOf(
+  plan: ReleasePlan,
+  groups: bigint,
+  blocks: number,
+  settings: SessionSettings,
+  account: Account,
+  balance: Balance,
+  balances: readonly Balance[],
+): Price {
   const selects = plan.groups.kind === 'selected'
   const shares = Fraction.make(BigInt(blocks))
   const delta = selects ? settings.delta.div(shares) : Fraction.zero
   if (selects && (!account.cap.deltaPot.isPositive() || !delta.isPositive())) refuse('keys.no-delta')
   const budget = statementBudget(settings.epsilon.div(shares), account.cap, delta)
   const reaches = reachesOf(plan, groups)
-  if (reaches.length === 0) return { charge: { epsilon: Fraction.zero, rho: Fraction.zero, delta: Fraction.zero }, mechanisms: [], kind: 'laplace', taken: nothingTaken, runnerUp: null, reason: 'every group is declared, so nothing is asked of the vault', threshold: null }
+  if (reaches.length === 0)
+    return {
+      charge: { epsilon: Fraction.zero, rho: Fraction.zero, delta: Fraction.zero },
+      mechanisms: [],
+      kind: 'laplace',
+      taken: nothingTaken,
+      runnerUp: null,
+      reason: 'every group is declared, so nothing is asked of the vault',
+      threshold: null,
+    }
   const open = balance.epsilonSpent !== null
   const choice = choose(reaches, { epsilon: open ? budget.epsilon : null, rho: budget.rho }, settings.noise)
   if (choice === null) {
-    if (settings.noise === 'gaussian') return refuse('setting.bad', { name: 'noise', value: 'gaussian', expected: 'laplace or auto: this account has no delta', sample: 'auto' })
+    if (settings.noise === 'gaussian')
+      return refuse('setting.bad', { name: 'noise', value: 'gaussian', expected: 'laplace or auto: this account has no delta', sample: 'auto' })
     return refuse('budget.spent', { account: 'your', asked: `epsilon ${settings.epsilon.toDecimal(6, 'up')}`, left: 'no track of this account can bear it' })
   }
   const taken = keepsPureTrack(plan, choice, settings, balances)
@@ -66,7 +84,12 @@ interface Taken {
 }
 
 /** 'auto' never makes an account's (the analyst's or everyone's) first Gaussian release where that lowers the number of default statements left: one Gaussian release closes the pure track. */
-function keepsPureTrack(plan: ReleasePlan, choice: Candidate & { readonly runnerUp: Candidate | null }, settings: SessionSettings, balances: readonly Balance[]): Taken {
+function keepsPureTrack(
+  plan: ReleasePlan,
+  choice: Candidate & { readonly runnerUp: Candidate | null },
+  settings: SessionSettings,
+  balances: readonly Balance[],
+): Taken {
   const { runnerUp } = choice
   if (settings.noise !== 'auto') return { candidate: choice, runnerUp, reason: `as set by hedgerow.noise` }
   if (choice.kind === 'gaussian' && runnerUp !== null) {

@@ -5,10 +5,10 @@ import type { DataSet } from '../policy/data-set.ts'
  * escapes) reaches a shell that holds no rows and raises.
  */
 export function mentionTest(dataSet: DataSet): (text: Uint8Array) => boolean {
-  const names = [...dataSet.tables.values()].filter(table => table.kind === 'private').map(table => table.name)
+  const names = [...dataSet.tables.values()].filter((table) => table.kind === 'private').map((table) => table.name)
   if (names.length === 0) return () => false
   const pattern = new RegExp(names.map(bytesOf).map(escape).join('|'), 'i')
-  return text => pattern.test(Buffer.from(text.buffer, text.byteOffset, text.byteLength).toString('latin1'))
+  return (text) => pattern.test(Buffer.from(text.buffer, text.byteOffset, text.byteLength).toString('latin1'))
 }
 
 /** The name as its UTF-8 bytes look in latin1; a quote inside is written twice in SQL. */

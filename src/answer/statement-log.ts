@@ -13,11 +13,11 @@ export function createStatementLog(): StatementLog {
   const statements = new Map<string, Set<string>>()
   const keyOf = (request: PullRequest): string => JSON.stringify([request.database, request.user, request.pid, request.statement, request.siblings])
   return {
-    remaining: request => {
+    remaining: (request) => {
       const paid = statements.get(keyOf(request))?.size ?? 0
       return Math.max(0, request.siblings.length - 1 - paid)
     },
-    paid: request => {
+    paid: (request) => {
       const key = keyOf(request)
       const [oldest] = statements.keys()
       if (statements.size >= kept && oldest !== undefined && !statements.has(key)) statements.delete(oldest)

@@ -24,7 +24,7 @@ function amount(value: Fraction, places = 20): string {
 export async function budgetRows(request: PullRequest, dataSet: DataSet, policies: Policies, ledger: Ledger): Promise<readonly Row[]> {
   const accounts = accountsOf(policies, dataSet, request.user)
   const balances = await ledger.balances([accounts.analyst, accounts.everyone])
-  return balances.map(balance => budgetRow(balance, dataSet, balance.account === accounts.analyst.id ? request.user : 'everyone'))
+  return balances.map((balance) => budgetRow(balance, dataSet, balance.account === accounts.analyst.id ? request.user : 'everyone'))
 }
 
 function budgetRow(balance: Balance, dataSet: DataSet, name: string): Row {
@@ -47,7 +47,8 @@ function budgetRow(balance: Balance, dataSet: DataSet, name: string): Row {
 
 function noteOf(balance: Balance, epsilon: Fraction | null): string {
   const tracks = balance.epsilonSpent === null ? 'Gaussian noise was used: the rho track counts' : 'both tracks are open: a statement must fit one of them'
-  const reading = epsilon === null ? '' : `; spending so far amounts to epsilon ${amount(epsilon, 6)} at the cap’s delta (for information: the cap is the guarantee)`
+  const reading =
+    epsilon === null ? '' : `; spending so far amounts to epsilon ${amount(epsilon, 6)} at the cap’s delta (for information: the cap is the guarantee)`
   const renewed = balance.cap.renews === 'never' ? '' : `; renewed each ${balance.cap.renews}: loss adds up over the periods, see loss_over_all_periods (rho)`
   return `${tracks}${reading}${renewed}`
 }
@@ -55,10 +56,10 @@ function noteOf(balance: Balance, epsilon: Fraction | null): string {
 /** Rows of hedgerow.charges, latest first. */
 export async function chargesRows(request: PullRequest, ledger: Ledger): Promise<readonly Row[]> {
   const entries = await ledger.charges(request.user, request.database, 1000)
-  return entries.map(entry => {
+  return entries.map((entry) => {
     const tables = entry.note.release['tables']
     const totals = entry.note.release['totals']
-    const mechanisms = Array.isArray(totals) ? [...new Set(totals.map(total => mechanismOf(total)))].join(', ') : ''
+    const mechanisms = Array.isArray(totals) ? [...new Set(totals.map((total) => mechanismOf(total)))].join(', ') : ''
     return row([
       entry.at,
       entry.charge.epsilon === null ? null : amount(entry.charge.epsilon, 12),
@@ -78,7 +79,7 @@ function mechanismOf(total: unknown): string {
 
 /** Rows of hedgerow.last_answer: one an output. */
 export function lastAnswerRows(outputs: readonly LastOutput[]): readonly Row[] {
-  return outputs.map(each =>
+  return outputs.map((each) =>
     row([
       each.output,
       each.mechanism,
@@ -102,16 +103,35 @@ export function boundsRows(dataSet: DataSet): readonly Row[] {
     const name = typedName(dataSet, table)
     if (table.kind === 'published') return [row([name, null, 'published: a copy stands in the lobby, free to read', null, null, null, null, null, null])]
     const head = row([name, null, ownerText(table, dataSet), table.bounds.groups.toString(), table.bounds.rows.toString(), null, null, null, null])
-    return [head, ...[...table.columns.values()].map(column => row([name, column.name, column.role === 'linking' ? 'says whose row it is: for joins and distinct counts' : column.type.printed, null, null, column.clamp?.[0] ?? null, column.clamp?.[1] ?? null, column.step, keysText(column)]))]
+    return [
+      head,
+      ...[...table.columns.values()].map((column) =>
+        row([
+          name,
+          column.name,
+          column.role === 'linking' ? 'says whose row it is: for joins and distinct counts' : column.type.printed,
+          null,
+          null,
+          column.clamp?.[0] ?? null,
+          column.clamp?.[1] ?? null,
+          column.step,
+          keysText(column),
+        ]),
+      ),
+    ]
   })
 }
 
 function ownerText(table: PrivateTable, dataSet: DataSet): string {
-  const way = table.owner.kind === 'column' ? table.owner.column : table.owner.steps.map(step => step.table).join(', ')
+  const way = table.owner.kind === 'column' ? table.owner.column : table.owner.steps.map((step) => step.table).join(', ')
   return `each row belongs to one ${dataSet.personCalled}, by ${way}${table.onePerPerson ? '; one row each' : ''}`
 }
 
-function keysText(column: { readonly values: readonly string[] | null; readonly valuesFrom: { readonly table: string; readonly column: string } | null; readonly type: { readonly name: string } }): string | null {
+function keysText(column: {
+  readonly values: readonly string[] | null
+  readonly valuesFrom: { readonly table: string; readonly column: string } | null
+  readonly type: { readonly name: string }
+}): string | null {
   if (column.values !== null) return column.values.join(', ')
   if (column.valuesFrom !== null) return `those of ${column.valuesFrom.table}.${column.valuesFrom.column}`
   return column.type.name === 'bool' ? 'true, false' : null

@@ -38,7 +38,7 @@ export const refusals = {
   'text.backslash': {
     sqlstate: '42601',
     message: 'a statement over private tables with a backslash in it cannot be read while standard_conforming_strings is off',
-    hint: 'SET standard_conforming_strings = on, and write E\'…\' where a backslash is to escape',
+    hint: "SET standard_conforming_strings = on, and write E'…' where a backslash is to escape",
     why: 'one text with two readings must not be guessed at',
   },
   'rows.private': {

@@ -32,9 +32,12 @@ export function pickOrder(plan: ReleasePlan, salts: readonly bigint[], key: (i: 
   const personType = scalarTypeOf(plan.dataSet.personType)
   const [first] = salts
   check(personType !== null && first !== undefined && salts.length > plan.keys.length, 'a salt for the person and for each key')
-  const mixed = plan.keys.reduce<Expr>((sum, each, i) => {
-    const part = hash(key(i), each.type, salts[i + 1] ?? 0n)
-    return operator(sum, '#', { kind: 'coalesce', args: [part, cast(integer(0n), 'int8')], at: -1 })
-  }, hash(person, personType, first))
-  return [mixed, ...plan.keys.map((_, i) => key(i))].map(by => ({ by, direction: 'default', using: [], nulls: 'default' }))
+  const mixed = plan.keys.reduce<Expr>(
+    (sum, each, i) => {
+      const part = hash(key(i), each.type, salts[i + 1] ?? 0n)
+      return operator(sum, '#', { kind: 'coalesce', args: [part, cast(integer(0n), 'int8')], at: -1 })
+    },
+    hash(person, personType, first),
+  )
+  return [mixed, ...plan.keys.map((_, i) => key(i))].map((by) => ({ by, direction: 'default', using: [], nulls: 'default' }))
 }

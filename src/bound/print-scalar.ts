@@ -34,7 +34,7 @@ export function printScalar(scalar: Scalar, fixed: FixedValues): Expr {
         if (value !== undefined) return printConstant(scalar, value)
       }
       return formOf(node.form).print(
-        node.args.map(arg => printScalar(arg, fixed)),
+        node.args.map((arg) => printScalar(arg, fixed)),
         node.words,
       )
     }

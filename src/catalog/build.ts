@@ -43,7 +43,7 @@ export function operator(left: Expr | null, name: string, right: Expr): Expr {
 
 /** A chain of AND or OR, nested ones taken in, as PostgreSQL's grammar does on sight. */
 export function logic(word: 'and' | 'or', args: readonly Expr[]): Expr {
-  const flat = args.flatMap(arg => (arg.kind === 'logic' && arg.word === word ? arg.args : [arg]))
+  const flat = args.flatMap((arg) => (arg.kind === 'logic' && arg.word === word ? arg.args : [arg]))
   const [first] = flat
   return flat.length === 1 && first !== undefined ? first : { kind: 'logic', word, args: flat, at: -1 }
 }

@@ -29,7 +29,14 @@ export interface Range {
 
 export type ScalarNode =
   /** `clamped`: the clamp it is printed with; `offers`: the clamp the policy declares, taken on wherever a bound is needed. */
-  | { readonly kind: 'column'; readonly scan: number; readonly column: string; readonly clamped: Clamp | null; readonly offers: Clamp | null; readonly collation?: Collation }
+  | {
+      readonly kind: 'column'
+      readonly scan: number
+      readonly column: string
+      readonly clamped: Clamp | null
+      readonly offers: Clamp | null
+      readonly collation?: Collation
+    }
   /** A text in the type's input form; null: NULL. */
   | { readonly kind: 'constant'; readonly text: string | null }
   /** A parameter of the block, 1-based; its value is bound as text. */

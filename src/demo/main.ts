@@ -28,7 +28,8 @@ function progressLine(): (fraction: number, doing: string) => void {
   let told = -1
   return (fraction, doing) => {
     const percent = Math.floor(fraction * 100)
-    if (process.stdout.isTTY) process.stdout.write(`\rloading the ferry company: ${percent.toString().padStart(3)} %  ${doing.padEnd(20)}${fraction === 1 ? '\n' : ''}`)
+    if (process.stdout.isTTY)
+      process.stdout.write(`\rloading the ferry company: ${percent.toString().padStart(3)} %  ${doing.padEnd(20)}${fraction === 1 ? '\n' : ''}`)
     else if (Math.floor(percent / 10) > told) {
       told = Math.floor(percent / 10)
       say(`loading the ferry company: ${percent.toString().padStart(3)} %  ${doing}`)
@@ -52,7 +53,10 @@ async function demo(): Promise<void> {
   const directory = await mkdtemp(join(tmpdir(), 'hedgerow-demo-'))
   closers.push(() => rm(directory, { recursive: true, force: true }))
   say('starting PostgreSQL: one server stands in for the vault, the lobby and the ledger')
-  const server = await startServer({ directory, settings: { fsync: 'off', full_page_writes: 'off', synchronous_commit: 'on', max_wal_size: '2GB', shared_buffers: '256MB' } })
+  const server = await startServer({
+    directory,
+    settings: { fsync: 'off', full_page_writes: 'off', synchronous_commit: 'on', max_wal_size: '2GB', shared_buffers: '256MB' },
+  })
   closers.push(() => server.stop())
   const vaultUrl = await ensureDatabase(server.url(), 'ferry_vault')
   const started = Date.now()
@@ -83,7 +87,9 @@ async function demo(): Promise<void> {
   const failed = await runStatements(url)
   if (failed > 0) return void (await stop(1))
   if (once) return void (await stop(0))
-  say(`\nHedgerow serves until Ctrl-C. Connect with\n\n    psql ${url}\n\n(ben's password is lanterns.) Try: \\d, EXPLAIN SELECT count(*) FROM trips, SELECT * FROM hedgerow.bounds`)
+  say(
+    `\nHedgerow serves until Ctrl-C. Connect with\n\n    psql ${url}\n\n(ben's password is lanterns.) Try: \\d, EXPLAIN SELECT count(*) FROM trips, SELECT * FROM hedgerow.bounds`,
+  )
 }
 
 async function runStatements(url: string): Promise<number> {

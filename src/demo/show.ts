@@ -5,15 +5,19 @@ type Cell = string | null
 
 /** A table in the manner of a terminal: columns padded, numbers as PostgreSQL prints them. */
 export function tableText(columns: readonly string[], rows: readonly (readonly Cell[])[]): string {
-  const cells = rows.map(row => row.map(cell => cell ?? ''))
-  const widths = columns.map((column, i) => Math.max(column.length, ...cells.map(row => row[i]?.length ?? 0)))
-  const line = (row: readonly string[]): string => row.map((cell, i) => ` ${cell.padEnd(widths[i] ?? 0)} `).join('|').trimEnd()
-  return [line(columns), widths.map(width => '-'.repeat(width + 2)).join('+'), ...cells.map(line)].join('\n')
+  const cells = rows.map((row) => row.map((cell) => cell ?? ''))
+  const widths = columns.map((column, i) => Math.max(column.length, ...cells.map((row) => row[i]?.length ?? 0)))
+  const line = (row: readonly string[]): string =>
+    row
+      .map((cell, i) => ` ${cell.padEnd(widths[i] ?? 0)} `)
+      .join('|')
+      .trimEnd()
+  return [line(columns), widths.map((width) => '-'.repeat(width + 2)).join('+'), ...cells.map(line)].join('\n')
 }
 
 async function rowsOf(client: pg.Client, text: string): Promise<{ readonly columns: readonly string[]; readonly rows: readonly (readonly Cell[])[] }> {
   const result = await client.query<Cell[]>({ text, rowMode: 'array', types: { getTypeParser: () => (value: string) => value } })
-  return { columns: result.fields.map(field => field.name), rows: result.rows }
+  return { columns: result.fields.map((field) => field.name), rows: result.rows }
 }
 
 const answer = `SELECT output, mechanism, margin, confidence, coalesce('epsilon ' || trim_scale(epsilon), 'rho ' || trim_scale(rho)) || CASE WHEN delta > 0 THEN ', delta ' || trim_scale(delta) ELSE '' END AS charge
@@ -24,7 +28,12 @@ FROM hedgerow.budget`
 /** Runs one statement through the wire and says everything about it: the SQL, the answer, margins, noise and charge, the budget after. */
 export async function show(client: pg.Client, statement: DemoStatement, number: number, say: (line: string) => void): Promise<boolean> {
   say(`\n── ${number.toString()}. ${statement.point}\n`)
-  say(statement.sql.split('\n').map(line => `    ${line}`).join('\n'))
+  say(
+    statement.sql
+      .split('\n')
+      .map((line) => `    ${line}`)
+      .join('\n'),
+  )
   say('')
   try {
     const { columns, rows } = await rowsOf(client, statement.sql)

@@ -8,7 +8,13 @@ const lookEveryMs = 200
  * Runs `work` on `client` while `watcher`, a second connection, ends every analyst's session (and rolls back every prepared transaction of one) that
  * `client` waits for. So no analyst's open transaction or lock holds a policy load up.
  */
-export async function endingBlockers<T>(watcher: pg.Client, client: pg.Client, analysts: readonly string[], ended: (role: string) => void, work: () => Promise<T>): Promise<T> {
+export async function endingBlockers<T>(
+  watcher: pg.Client,
+  client: pg.Client,
+  analysts: readonly string[],
+  ended: (role: string) => void,
+  work: () => Promise<T>,
+): Promise<T> {
   const [row] = await rowsOf(client, 'SELECT pg_catalog.pg_backend_pid()')
   const pid = row?.[0] ?? '0'
   const stop = new AbortController()

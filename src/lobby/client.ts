@@ -74,7 +74,15 @@ class DataSetPool {
     await Promise.all(this.#idle.splice(0).map((client) => client.end().catch(() => undefined)))
   }
   async #open(): Promise<pg.Client> {
-    const client = await openSession(this.#url, { statement_timeout: String(this.#timeoutMs), row_security: 'on', client_min_messages: 'error', DateStyle: 'ISO, MDY', IntervalStyle: 'postgres', extra_float_digits: '1', role: 'hedgerow_reader' })
+    const client = await openSession(this.#url, {
+      statement_timeout: String(this.#timeoutMs),
+      row_security: 'on',
+      client_min_messages: 'error',
+      DateStyle: 'ISO, MDY',
+      IntervalStyle: 'postgres',
+      extra_float_digits: '1',
+      role: 'hedgerow_reader',
+    })
     client.on('end', () => {
       const at = this.#idle.indexOf(client)
       if (at >= 0) this.#idle.splice(at, 1)
@@ -108,7 +116,12 @@ function isConnectionLost(sqlstate: string): boolean {
 
 /** A type made anew by a policy load has a new oid, so what was learnt stays true. */
 async function learnTypes(client: pg.Client, pool: DataSetPool, wanted: readonly { readonly oid: number; readonly modifier: number }[]): Promise<void> {
-  const missing = new Map(wanted.map((type) => [`${type.oid},${type.modifier}`, type]).filter(([key]) => !pool.types.has(key as string)) as [string, { oid: number; modifier: number }][])
+  const missing = new Map(
+    wanted.map((type) => [`${type.oid},${type.modifier}`, type]).filter(([key]) => !pool.types.has(key as string)) as [
+      string,
+      { oid: number; modifier: number },
+    ][],
+  )
   if (missing.size === 0) return
   const list = [...missing.values()].map((type) => `(${type.oid}, ${type.modifier})`).join(', ')
   // With an empty search path format_type prints every type that is not PostgreSQL's own with its schema.
@@ -119,7 +132,13 @@ async function learnTypes(client: pg.Client, pool: DataSetPool, wanted: readonly
   for (const [oid, modifier, printed] of results[2]?.rows ?? []) pool.types.set(`${oid},${modifier}`, printed ?? '')
 }
 
-async function readPublished(client: pg.Client, text: string, values: readonly (string | null)[], timeZone: string, ceiling: number): Promise<readonly TextRow[] | 'too-many'> {
+async function readPublished(
+  client: pg.Client,
+  text: string,
+  values: readonly (string | null)[],
+  timeZone: string,
+  ceiling: number,
+): Promise<readonly TextRow[] | 'too-many'> {
   await client.query('BEGIN READ ONLY')
   try {
     await client.query('SELECT pg_catalog.set_config($1, $2, true)', ['TimeZone', timeZone])

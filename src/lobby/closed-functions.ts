@@ -5,8 +5,7 @@ import { rowsOf } from './session.ts'
  * What no analyst needs and some could misuse: large objects (a store shared by all), advisory locks (a way to hold others up), messages in the write-ahead
  * log, exported snapshots, and the functions that run a text as a query and so read past the gate.
  */
-const closedNames =
-  '^(lo_.*|loread|lowrite|pg_(try_)?advisory_.*|pg_logical_emit_message|pg_export_snapshot|(table|query|cursor|schema|database)_to_xml.*)$'
+const closedNames = '^(lo_.*|loread|lowrite|pg_(try_)?advisory_.*|pg_logical_emit_message|pg_export_snapshot|(table|query|cursor|schema|database)_to_xml.*)$'
 
 /** Takes EXECUTE on them from PUBLIC in this database. Returns the signatures that stayed open, because their owner is somebody else. */
 export function closeFunctions(client: pg.Client): Promise<readonly string[]> {

@@ -103,10 +103,11 @@ class CopyIn extends CopyStep {
     this.#chunks = []
     this.#size = 0
     if (wire === null || !wire.stream.writableNeedDrain) return true
-    if (!this.#waiting) wire.stream.once('drain', () => {
-      this.#waiting = false
-      resume()
-    })
+    if (!this.#waiting)
+      wire.stream.once('drain', () => {
+        this.#waiting = false
+        resume()
+      })
     this.#waiting = true
     return false
   }

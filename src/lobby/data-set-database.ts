@@ -19,10 +19,20 @@ export interface PullAddress {
 }
 
 /** What one data set's database gets: all of it in steps that can be repeated, the last of them one transaction. */
-export async function installDataSet(lobby: pg.Client, vault: pg.Client, dataSet: DataSet, pull: PullAddress, superuser: boolean, warn: (text: string) => void): Promise<readonly string[]> {
+export async function installDataSet(
+  lobby: pg.Client,
+  vault: pg.Client,
+  dataSet: DataSet,
+  pull: PullAddress,
+  superuser: boolean,
+  warn: (text: string) => void,
+): Promise<readonly string[]> {
   await refuseStrangers(lobby, dataSet)
   const open = await inTransaction(lobby, 'BEGIN', () => closeFunctions(lobby))
-  if (open.length > 0) warn(`functions that analysts should not have are open to them: have a superuser run in ${dataSet.name}: REVOKE EXECUTE ON FUNCTION ${open.join(', ')} FROM PUBLIC`)
+  if (open.length > 0)
+    warn(
+      `functions that analysts should not have are open to them: have a superuser run in ${dataSet.name}: REVOKE EXECUTE ON FUNCTION ${open.join(', ')} FROM PUBLIC`,
+    )
   return inTransaction(vault, 'BEGIN ISOLATION LEVEL REPEATABLE READ READ ONLY', async () => {
     const shape = await readVaultShape(vault, dataSet)
     const plans = planTables(dataSet, shape)
@@ -72,7 +82,10 @@ async function prepare(lobby: pg.Client, dataSet: DataSet, plans: readonly Table
 
 /** Only a superuser can install dblink; another role finds it prepared, or learns what to ask for. */
 async function installDblink(lobby: pg.Client, database: string, pull: PullAddress, superuser: boolean): Promise<void> {
-  const [row] = await rowsOf(lobby, "SELECT n.nspname FROM pg_catalog.pg_extension e JOIN pg_catalog.pg_namespace n ON n.oid = e.extnamespace WHERE e.extname = 'dblink'")
+  const [row] = await rowsOf(
+    lobby,
+    "SELECT n.nspname FROM pg_catalog.pg_extension e JOIN pg_catalog.pg_namespace n ON n.oid = e.extnamespace WHERE e.extname = 'dblink'",
+  )
   try {
     if (row === undefined) await lobby.query('CREATE EXTENSION dblink SCHEMA hedgerow_inside')
     else if (row[0] !== 'hedgerow_inside') await lobby.query('ALTER EXTENSION dblink SET SCHEMA hedgerow_inside')
@@ -94,7 +107,9 @@ async function installDblink(lobby: pg.Client, database: string, pull: PullAddre
 }
 
 async function installTables(lobby: pg.Client, dataSet: DataSet, plans: readonly TablePlan[], published: readonly TablePlan[]): Promise<void> {
-  const made = new Map((await rowsOf(lobby, "SELECT key, signature FROM hedgerow_inside.made WHERE kind <> 'view'")).map(([key, signature]) => [key ?? '', signature]))
+  const made = new Map(
+    (await rowsOf(lobby, "SELECT key, signature FROM hedgerow_inside.made WHERE kind <> 'view'")).map(([key, signature]) => [key ?? '', signature]),
+  )
   const kept = new Set(plans.map((plan) => plan.key))
   for (const key of made.keys()) {
     const dot = key.indexOf('.')
@@ -119,7 +134,9 @@ async function installTables(lobby: pg.Client, dataSet: DataSet, plans: readonly
 async function addForeignKeys(lobby: pg.Client, plans: readonly TablePlan[]): Promise<void> {
   await lobby.query('SET LOCAL ROLE hedgerow_owner')
   for (const plan of plans) {
-    const rows = await rowsOf(lobby, "SELECT conname FROM pg_catalog.pg_constraint WHERE conrelid = $1::regclass AND contype = 'f'", [qualified(plan.schema, plan.name)])
+    const rows = await rowsOf(lobby, "SELECT conname FROM pg_catalog.pg_constraint WHERE conrelid = $1::regclass AND contype = 'f'", [
+      qualified(plan.schema, plan.name),
+    ])
     const here = new Set(rows.map(([constraint]) => constraint))
     for (const key of plan.foreignKeys) if (!here.has(key.name)) await lobby.query(key.add)
   }
@@ -136,7 +153,7 @@ async function installFunctions(lobby: pg.Client): Promise<void> {
     const grant = made.open ? `GRANT EXECUTE ON FUNCTION ${made.signature} TO PUBLIC` : `REVOKE ALL ON FUNCTION ${made.signature} FROM PUBLIC`
     await lobby.query(`${made.text}; ALTER FUNCTION ${made.signature} OWNER TO hedgerow_owner; ${grant}`)
   }
-  const made = new Map(await rowsOf(lobby, 'SELECT key, signature FROM hedgerow_inside.made') as unknown as [string, string][])
+  const made = new Map((await rowsOf(lobby, 'SELECT key, signature FROM hedgerow_inside.made')) as unknown as [string, string][])
   for (const view of lobbyViews) {
     const key = `hedgerow.${view.name}`
     const text = viewText(view)
@@ -148,7 +165,11 @@ async function installFunctions(lobby: pg.Client): Promise<void> {
     await lobby.query(`COMMENT ON VIEW ${qualified('hedgerow', view.name)} IS ${literal(view.comment)}`)
     await lobby.query(`ALTER VIEW ${qualified('hedgerow', view.name)} OWNER TO hedgerow_owner`)
     await lobby.query(`GRANT SELECT ON ${qualified('hedgerow', view.name)} TO PUBLIC`)
-    await rowsOf(lobby, 'INSERT INTO hedgerow_inside.made VALUES ($1, $2, $3) ON CONFLICT (key) DO UPDATE SET signature = excluded.signature', [key, 'view', signature])
+    await rowsOf(lobby, 'INSERT INTO hedgerow_inside.made VALUES ($1, $2, $3) ON CONFLICT (key) DO UPDATE SET signature = excluded.signature', [
+      key,
+      'view',
+      signature,
+    ])
   }
 }
 
@@ -163,7 +184,8 @@ async function installServer(lobby: pg.Client, pull: PullAddress): Promise<void>
     ['user', 'hedgerow'],
     ['password', pull.password],
   ]
-  const list = (pairs: readonly (readonly [string, string])[], verb: string): string => pairs.map(([key, value]) => `${verb} ${key} ${literal(value)}`).join(', ')
+  const list = (pairs: readonly (readonly [string, string])[], verb: string): string =>
+    pairs.map(([key, value]) => `${verb} ${key} ${literal(value)}`).join(', ')
   const found = await rowsOf(lobby, "SELECT FROM pg_catalog.pg_foreign_server WHERE srvname = 'hedgerow_pull'")
   if (found.length > 0) {
     await lobby.query(`ALTER SERVER hedgerow_pull OPTIONS (${list(options, 'SET')})`)

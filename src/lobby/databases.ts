@@ -7,7 +7,9 @@ import { setOn } from './settings-of.ts'
 
 /** Makes the data sets' databases that are missing: UTF8, code-point order. Returns the names of the new ones. */
 export async function createDatabases(client: pg.Client, wanted: readonly string[]): Promise<readonly string[]> {
-  const rows = await rowsOf(client, 'SELECT datname, pg_catalog.pg_encoding_to_char(encoding) FROM pg_catalog.pg_database WHERE datname = ANY ($1::text[])', [wanted])
+  const rows = await rowsOf(client, 'SELECT datname, pg_catalog.pg_encoding_to_char(encoding) FROM pg_catalog.pg_database WHERE datname = ANY ($1::text[])', [
+    wanted,
+  ])
   const encodings = new Map(rows.map(([database, encoding]) => [database, encoding]))
   const created: string[] = []
   for (const database of wanted) {
@@ -48,7 +50,8 @@ export async function closeDatabases(client: pg.Client, policies: Policies, anal
   const others = await otherRoles(client, analysts)
   for (const database of await openDatabases(client)) {
     try {
-      if (!policies.dataSets.has(database) && others.length > 0) await client.query(`GRANT CONNECT, TEMPORARY ON DATABASE ${name(database)} TO ${names(others)}`)
+      if (!policies.dataSets.has(database) && others.length > 0)
+        await client.query(`GRANT CONNECT, TEMPORARY ON DATABASE ${name(database)} TO ${names(others)}`)
       await client.query(`REVOKE ALL ON DATABASE ${name(database)} FROM PUBLIC`)
     } catch (error) {
       // 3D000: it was dropped in the meantime.
@@ -63,7 +66,8 @@ export async function closeDatabases(client: pg.Client, policies: Policies, anal
   }
   for (const database of policies.dataSets.keys()) await client.query(`GRANT CONNECT ON DATABASE ${name(database)} TO hedgerow_reader`)
   return (await openDatabases(client)).map(
-    (database) => `the database ${database} stays open to every role of the lobby's server: its owner must run REVOKE CONNECT ON DATABASE ${name(database)} FROM PUBLIC`,
+    (database) =>
+      `the database ${database} stays open to every role of the lobby's server: its owner must run REVOKE CONNECT ON DATABASE ${name(database)} FROM PUBLIC`,
   )
 }
 

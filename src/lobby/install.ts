@@ -70,7 +70,13 @@ async function install(order: LobbyOrder): Promise<LobbyReport> {
   }
 }
 
-async function installRoles(main: pg.Client, order: LobbyOrder, superuser: boolean, warn: (text: string) => void, ended: (role: string) => void): Promise<RoleOutcome> {
+async function installRoles(
+  main: pg.Client,
+  order: LobbyOrder,
+  superuser: boolean,
+  warn: (text: string) => void,
+  ended: (role: string) => void,
+): Promise<RoleOutcome> {
   await inTransaction(main, 'BEGIN', () => installOwnRoles(main, superuser))
   const known = await knownAnalysts(main, order.policies)
   await withWatcher(order.lobbyUrl, main, known.analysts, ended, () =>
@@ -79,14 +85,27 @@ async function installRoles(main: pg.Client, order: LobbyOrder, superuser: boole
   return known
 }
 
-async function installOne(order: LobbyOrder, dataSet: string, known: RoleOutcome, superuser: boolean, warn: (text: string) => void, ended: (role: string) => void): Promise<readonly string[]> {
+async function installOne(
+  order: LobbyOrder,
+  dataSet: string,
+  known: RoleOutcome,
+  superuser: boolean,
+  warn: (text: string) => void,
+  ended: (role: string) => void,
+): Promise<readonly string[]> {
   const definition = order.policies.dataSets.get(dataSet)
   if (definition === undefined) return []
   const url = urlOf(order.lobbyUrl, dataSet)
   const lobby = await openInstaller(url)
   try {
     await quiet(lobby)
-    const vault = await openSession(order.vaultUrl, { DateStyle: 'ISO, MDY', IntervalStyle: 'postgres', TimeZone: 'UTC', extra_float_digits: '3', client_encoding: 'UTF8' })
+    const vault = await openSession(order.vaultUrl, {
+      DateStyle: 'ISO, MDY',
+      IntervalStyle: 'postgres',
+      TimeZone: 'UTC',
+      extra_float_digits: '3',
+      client_encoding: 'UTF8',
+    })
     try {
       return await withWatcher(url, lobby, known.analysts, ended, () => installDataSet(lobby, vault, definition, order.pull, superuser, warn))
     } finally {
@@ -153,7 +172,10 @@ async function refuseVault(order: LobbyOrder, main: pg.Client): Promise<void> {
     const [theirs] = await rowsOf(vault, identifier)
     const [ours] = await rowsOf(main, identifier)
     if (theirs?.[0] === ours?.[0] && order.policies.dataSets.has(theirs?.[1] ?? '')) {
-      throw new LobbyProblem(`the vault is the database ${theirs?.[1]} of the lobby's own server, where the lobby of that data set would be`, 'rename one of them, or use another server for the lobby')
+      throw new LobbyProblem(
+        `the vault is the database ${theirs?.[1]} of the lobby's own server, where the lobby of that data set would be`,
+        'rename one of them, or use another server for the lobby',
+      )
     }
   } finally {
     await vault.end().catch(() => undefined)

@@ -28,7 +28,8 @@ export async function swapPublished(lobby: pg.Client, plan: TablePlan, at: numbe
   await dropRelation(lobby, plan.schema, plan.name)
   await lobby.query(`ALTER TABLE ${qualified(stage, relation)} SET SCHEMA ${name(plan.schema)}`)
   await lobby.query(`ALTER TABLE ${qualified(plan.schema, relation)} RENAME TO ${name(plan.name)}`)
-  for (const [number, index] of plan.indexes.entries()) await lobby.query(`ALTER INDEX ${qualified(plan.schema, `${relation}_${number}`)} RENAME TO ${name(index.name)}`)
+  for (const [number, index] of plan.indexes.entries())
+    await lobby.query(`ALTER INDEX ${qualified(plan.schema, `${relation}_${number}`)} RENAME TO ${name(index.name)}`)
 }
 
 /** Drops what this name stands for, with the temporary views that analysts built on it. */

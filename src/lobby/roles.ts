@@ -51,7 +51,14 @@ export async function knownAnalysts(client: pg.Client, policies: Policies): Prom
  * INVARIANT ANALYSTS AS DECLARED: after each load an analyst's role has the policy's password, attributes, memberships and settings and no others, whatever
  * the analyst changed about it; who left the policy can no longer log in.
  */
-export async function installAnalysts(client: pg.Client, policies: Policies, known: RoleOutcome, limits: AnalystLimits, superuser: boolean, warn: (text: string) => void): Promise<void> {
+export async function installAnalysts(
+  client: pg.Client,
+  policies: Policies,
+  known: RoleOutcome,
+  limits: AnalystLimits,
+  superuser: boolean,
+  warn: (text: string) => void,
+): Promise<void> {
   for (const role of known.removed) await client.query(`ALTER ROLE ${name(role)} NOLOGIN PASSWORD NULL`)
   for (const analyst of policies.analysts.values()) {
     await createAnalyst(client, analyst.name, superuser)

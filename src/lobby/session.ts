@@ -19,7 +19,8 @@ export async function openSession(url: string, settings: Readonly<Record<string,
   client.on('error', () => undefined)
   await client.connect()
   try {
-    if (Object.keys(settings).length > 0) await client.query('SELECT pg_catalog.set_config(key, value, false) FROM pg_catalog.jsonb_each_text($1::jsonb)', [JSON.stringify(settings)])
+    if (Object.keys(settings).length > 0)
+      await client.query('SELECT pg_catalog.set_config(key, value, false) FROM pg_catalog.jsonb_each_text($1::jsonb)', [JSON.stringify(settings)])
   } catch (error) {
     await client.end().catch(() => undefined)
     throw error

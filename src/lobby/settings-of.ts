@@ -3,7 +3,13 @@ import { literal } from './quote.ts'
 import { sqlstateOf } from './session.ts'
 
 /** Sets `settings` on a role or database (`target`: 'ROLE ana', 'DATABASE ferries', names quoted). What the lobby's role may not set is warned of. Inside a transaction. */
-export async function setOn(client: pg.Client, target: string, settings: readonly (readonly [name: string, value: string])[], superuser: boolean, warn: (text: string) => void): Promise<void> {
+export async function setOn(
+  client: pg.Client,
+  target: string,
+  settings: readonly (readonly [name: string, value: string])[],
+  superuser: boolean,
+  warn: (text: string) => void,
+): Promise<void> {
   const texts = settings.map(([setting, value]) => [setting, `ALTER ${target} SET ${setting} = ${literal(value)}`] as const)
   if (superuser) {
     await client.query(texts.map(([, text]) => text).join('; '))

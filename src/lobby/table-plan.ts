@@ -70,7 +70,8 @@ function planIndexes(found: TableShape, table: DataTable): readonly IndexPlan[] 
 function planForeignKeys(dataSet: DataSet, shape: VaultShape, found: TableShape, table: DataTable): TablePlan['foreignKeys'] {
   return found.foreignKeys.flatMap((key) => {
     const target = dataSet.tables.get(key.table)
-    if (target === undefined || !key.columns.every((column) => table.columns.has(column)) || !key.referenced.every((column) => target.columns.has(column))) return []
+    if (target === undefined || !key.columns.every((column) => table.columns.has(column)) || !key.referenced.every((column) => target.columns.has(column)))
+      return []
     const unique = shape.tables.get(key.table)?.indexes.some((index) => index.kind !== 'plain' && sameColumns(index.columns, key.referenced)) ?? false
     if (!unique) return []
     const add = `ALTER TABLE ${qualified(table.schema, table.name)} ADD CONSTRAINT ${name(key.name)}

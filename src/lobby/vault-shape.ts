@@ -15,7 +15,12 @@ export interface TableShape {
   readonly columns: readonly { readonly name: string; readonly type: string }[]
   /** Primary key and plain unique and other btree indexes over columns. */
   readonly indexes: readonly { readonly name: string; readonly kind: 'primary' | 'unique' | 'plain'; readonly columns: readonly string[] }[]
-  readonly foreignKeys: readonly { readonly name: string; readonly columns: readonly string[]; readonly table: string; readonly referenced: readonly string[] }[]
+  readonly foreignKeys: readonly {
+    readonly name: string
+    readonly columns: readonly string[]
+    readonly table: string
+    readonly referenced: readonly string[]
+  }[]
 }
 
 export type TypeShape =
@@ -71,7 +76,12 @@ export async function readVaultShape(vault: pg.Client, dataSet: DataSet): Promis
     tables.set(key, {
       columns: list.map(([, name, type]) => ({ name: name ?? '', type: type ?? '' })),
       indexes: (indexes.get(key) ?? []).map(([, name, kind, on]) => ({ name: name ?? '', kind: indexKind(kind ?? ''), columns: namesIn(on) })),
-      foreignKeys: (foreignKeys.get(key) ?? []).map(([, name, table, on, to]) => ({ name: name ?? '', table: table ?? '', columns: namesIn(on), referenced: namesIn(to) })),
+      foreignKeys: (foreignKeys.get(key) ?? []).map(([, name, table, on, to]) => ({
+        name: name ?? '',
+        table: table ?? '',
+        columns: namesIn(on),
+        referenced: namesIn(to),
+      })),
     })
   }
   return { tables, types: types.map(typeShape) }

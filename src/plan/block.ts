@@ -36,9 +36,9 @@ function plan(query: Query, outer: Context, limits: Limits): ReleasePlan {
   const owned = own(from.source, where, context)
   const spread = fanOut(owned)
   const grouped = keyPositions(select)
-  const keys = grouped.map(position => keyOf(lowerExpr(targetAt(select, position), from.scope, context), context.scans))
+  const keys = grouped.map((position) => keyOf(lowerExpr(targetAt(select, position), from.scope, context), context.scans))
   const calls = select.targets.flatMap((target, position) => (grouped.includes(position) ? [] : [aggregateOf(target.value)]))
-  const aggregates = calls.map(call => lowerAggregate(call, from.scope, owned, context))
+  const aggregates = calls.map((call) => lowerAggregate(call, from.scope, owned, context))
   const made = totalsOf(aggregates, owned, spread, limits.rows, context.scans)
   const { groups, totals } = groupsOf(keys, listsOf(keys, from.source, where, context.scans), made.totals)
   refuseOpaqueCaps(spread, context)
@@ -62,14 +62,19 @@ function plan(query: Query, outer: Context, limits: Limits): ReleasePlan {
 function refuseOpaqueCaps(spread: FanOut, context: Context): void {
   for (const scan of context.scans) {
     if (!spread.capped.has(scan.index)) continue
-    for (const column of scan.table.columns.values()) if (scalarTypeOf(column.type) === null) refuse('join.fan-out', { ceiling: listedRows.toString() }, scan.at)
+    for (const column of scan.table.columns.values())
+      if (scalarTypeOf(column.type) === null) refuse('join.fan-out', { ceiling: listedRows.toString() }, scan.at)
   }
 }
 
-function groupsOf(keys: ReleasePlan['keys'], factors: ReturnType<typeof listsOf>, totals: readonly Total[]): { readonly groups: Groups; readonly totals: readonly Total[] } {
+function groupsOf(
+  keys: ReleasePlan['keys'],
+  factors: ReturnType<typeof listsOf>,
+  totals: readonly Total[],
+): { readonly groups: Groups; readonly totals: readonly Total[] } {
   if (keys.length === 0) return { groups: { kind: 'one' }, totals }
   if (factors !== null) return { groups: { kind: 'listed', factors }, totals }
-  const persons = totals.findIndex(total => total.kind === 'persons' && total.filter === null)
+  const persons = totals.findIndex((total) => total.kind === 'persons' && total.filter === null)
   if (persons >= 0) return { groups: { kind: 'selected', persons }, totals }
   return { groups: { kind: 'selected', persons: totals.length }, totals: [...totals, { kind: 'persons', filter: null }] }
 }
@@ -77,18 +82,25 @@ function groupsOf(keys: ReleasePlan['keys'], factors: ReturnType<typeof listsOf>
 function blockSelect(query: Query): Select {
   const body = query.body
   if (body.kind !== 'select') return refuse('block.shape', { what: 'a set operation as one block' })
-  const bare = query.order.length === 0 && query.limit === null && query.offset === null && body.having === null && body.windows.length === 0 && body.distinct === null
+  const bare =
+    query.order.length === 0 && query.limit === null && query.offset === null && body.having === null && body.windows.length === 0 && body.distinct === null
   return bare ? body : refuse('block.shape', { what: 'HAVING, ORDER BY, DISTINCT, WINDOW or LIMIT inside a block' })
 }
 
 /** Positions (from 0) of the targets that are group keys: a block groups by ordinals only. */
 function keyPositions(select: Select): readonly number[] {
-  const positions = select.group.map(item => {
+  const positions = select.group.map((item) => {
     const value = item.kind === 'expression' ? item.value : null
-    const ordinal = value?.kind === 'constant' && value.constant.kind === 'integer' ? value.constant.value : refuse('block.shape', { what: 'a block that is not grouped by positions' })
+    const ordinal =
+      value?.kind === 'constant' && value.constant.kind === 'integer'
+        ? value.constant.value
+        : refuse('block.shape', { what: 'a block that is not grouped by positions' })
     return select.targets.findIndex((_, i) => (i + 1).toString() === ordinal)
   })
-  check(positions.every(position => position >= 0), 'group positions are in the list')
+  check(
+    positions.every((position) => position >= 0),
+    'group positions are in the list',
+  )
   return [...new Set(positions)]
 }
 
@@ -101,7 +113,9 @@ function targetAt(select: Select, position: number): Expr {
 function aggregateOf(value: Expr): NonNullable<ReturnType<typeof asAggregate>> {
   const call = asAggregate(value)
   if (call !== null) return call
-  return value.kind === 'column' ? refuse('block.ungrouped', { column: value.name.join('.') }, value.at) : refuse('block.shape', { what: 'a value that is neither a group key nor one aggregate, inside a block,' })
+  return value.kind === 'column'
+    ? refuse('block.ungrouped', { column: value.name.join('.') }, value.at)
+    : refuse('block.shape', { what: 'a value that is neither a group key nor one aggregate, inside a block,' })
 }
 
 function columnsOf(select: Select, grouped: readonly number[]): ReleasePlan['columns'] {

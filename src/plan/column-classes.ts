@@ -16,7 +16,7 @@ export function columnClasses(): ColumnClasses {
     return at
   }
   return {
-    find: ref => root(refKey(ref)),
+    find: (ref) => root(refKey(ref)),
     merge: (a, b) => {
       const [x, y] = [root(refKey(a)), root(refKey(b))]
       if (x !== y) parent.set(x, y)

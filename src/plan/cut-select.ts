@@ -45,16 +45,35 @@ export function cutSelect(query: Query, select: Select, names: Names, blocks: Cu
   for (const key of groupKeys(select, items)) addKey(cutting, key)
   // the block keeps its place before those that its own post-processing cuts out
   const slot = blocks.push({ query, parameters: [], names: [] }) - 1
-  const targets = select.targets.map(target => ({ value: rest(target.value, cutting), label: labelOf(target), at: target.at }))
+  const targets = select.targets.map((target) => ({ value: rest(target.value, cutting), label: labelOf(target), at: target.at }))
   const having = select.having === null ? null : rest(select.having, cutting)
-  const windows = select.windows.map(window => mapWindow(window, e => rest(e, cutting)))
-  const distinct = select.distinct === null ? null : select.distinct.map(e => sorted({ by: e, direction: 'default', using: [], nulls: 'default' }, select, cutting).by)
-  const order = query.order.map(item => sorted(item, select, cutting))
+  const windows = select.windows.map((window) => mapWindow(window, (e) => rest(e, cutting)))
+  const distinct =
+    select.distinct === null ? null : select.distinct.map((e) => sorted({ by: e, direction: 'default', using: [], nulls: 'default' }, select, cutting).by)
+  const order = query.order.map((item) => sorted(item, select, cutting))
   blocks[slot] = blockOf(select, cutting, names)
   const from: Select['from'] = [
     {
       kind: 'function',
-      functions: [{ call: { kind: 'call', name: ['hedgerow', placeholderName(block)], args: [], star: false, distinct: false, variadic: false, order: [], within: false, filter: null, over: null, syntax: 'plain', at: -1 }, definitions: [] }],
+      functions: [
+        {
+          call: {
+            kind: 'call',
+            name: ['hedgerow', placeholderName(block)],
+            args: [],
+            star: false,
+            distinct: false,
+            variadic: false,
+            order: [],
+            within: false,
+            filter: null,
+            over: null,
+            syntax: 'plain',
+            at: -1,
+          },
+          definitions: [],
+        },
+      ],
       rowsFrom: false,
       lateral: false,
       ordinality: false,
@@ -69,7 +88,7 @@ export function cutSelect(query: Query, select: Select, names: Names, blocks: Cu
 }
 
 function groupKeys(select: Select, items: readonly NamedItem[]): readonly Expr[] {
-  return select.group.map(item => {
+  return select.group.map((item) => {
     if (item.kind !== 'expression') return refuse('block.shape', { what: item.kind === 'sets' ? item.word.toUpperCase() : 'GROUP BY ()' }, item.at)
     const value = item.value
     if (value.kind === 'constant' && value.constant.kind === 'integer') {
@@ -78,8 +97,8 @@ function groupKeys(select: Select, items: readonly NamedItem[]): readonly Expr[]
       return target?.value ?? refuse('block.shape', { what: `GROUP BY ${ordinal}` }, value.at)
     }
     // a bare name is a column of FROM first, and only then a label of the list
-    if (value.kind === 'column' && value.name.length === 1 && !items.some(each => each.columns.includes(value.name[0] ?? ''))) {
-      const labelled = select.targets.find(target => labelOf(target) === value.name[0])
+    if (value.kind === 'column' && value.name.length === 1 && !items.some((each) => each.columns.includes(value.name[0] ?? ''))) {
+      const labelled = select.targets.find((target) => labelOf(target) === value.name[0])
       if (labelled !== undefined) return labelled.value
     }
     return value
@@ -91,15 +110,15 @@ function canonical(expr: Expr, items: readonly NamedItem[]): Expr {
   if (expr.kind === 'column' && !expr.star) {
     const column = expr.name.at(-1) ?? ''
     const table = expr.name.at(-2)
-    const item = table === undefined ? items.find(each => each.columns.includes(column)) : items.find(each => each.name === table)
+    const item = table === undefined ? items.find((each) => each.columns.includes(column)) : items.find((each) => each.name === table)
     return item === undefined ? expr : { ...expr, name: [item.name, column] }
   }
-  return mapExpr(expr, child => canonical(child, items))
+  return mapExpr(expr, (child) => canonical(child, items))
 }
 
 function addKey(cutting: Cutting, written: Expr): number {
   const form = canonical(written, cutting.items)
-  const found = cutting.keys.findIndex(key => sameExpr(key.canonical, form))
+  const found = cutting.keys.findIndex((key) => sameExpr(key.canonical, form))
   return found >= 0 ? found : cutting.keys.push({ written, canonical: form }) - 1
 }
 
@@ -111,13 +130,14 @@ function released(cutting: Cutting, name: string, at: number): Expr {
 /** What stays of an expression outside the block. */
 function rest(expr: Expr, cutting: Cutting): Expr {
   const form = canonical(expr, cutting.items)
-  const key = cutting.keys.findIndex(each => sameExpr(each.canonical, form))
+  const key = cutting.keys.findIndex((each) => sameExpr(each.canonical, form))
   if (key >= 0 && expr.kind !== 'constant') return released(cutting, `k${String(key)}`, expr.at)
   const call = asAggregate(expr)
   if (call !== null) {
-    if (children(call).some(child => asAggregate(child) !== null)) refuse('block.shape', { what: 'an aggregate inside an aggregate' }, expr.at)
-    const found = cutting.calls.findIndex(each => sameExpr(each.canonical, form))
-    if (found < 0 && cutting.calls.length === callCeiling) refuse('block.too-many', { what: 'aggregates in one SELECT', ceiling: callCeiling.toString() }, expr.at)
+    if (children(call).some((child) => asAggregate(child) !== null)) refuse('block.shape', { what: 'an aggregate inside an aggregate' }, expr.at)
+    const found = cutting.calls.findIndex((each) => sameExpr(each.canonical, form))
+    if (found < 0 && cutting.calls.length === callCeiling)
+      refuse('block.too-many', { what: 'aggregates in one SELECT', ceiling: callCeiling.toString() }, expr.at)
     const place = found >= 0 ? found : cutting.calls.push({ written: call, canonical: form }) - 1
     return released(cutting, `a${String(place)}`, expr.at)
   }
@@ -128,47 +148,74 @@ function rest(expr: Expr, cutting: Cutting): Expr {
     const cut = cutting.inside(expr)
     return cut.kind === 'sublink' ? { ...cut, test, query: insideQuery(cut.query, cutting) } : cut
   }
-  return mapExpr(expr, child => rest(child, cutting))
+  return mapExpr(expr, (child) => rest(child, cutting))
 }
 
 /** A column outside of any aggregate: a key by way of its table's primary key, or PostgreSQL's own complaint. */
 function loneColumn(expr: Extract<Expr, { kind: 'column' }>, form: Expr, cutting: Cutting): Expr {
   if (expr.star) {
     const shown = expr.name.at(-1)
-    const item = cutting.items.find(each => each.table?.kind === 'private' && (shown === undefined || each.name === shown)) ?? cutting.items[0]
+    const item = cutting.items.find((each) => each.table?.kind === 'private' && (shown === undefined || each.name === shown)) ?? cutting.items[0]
     return refuse('rows.private', { table: item?.table?.name ?? item?.name ?? '' }, expr.at)
   }
-  const item = form.kind === 'column' ? cutting.items.find(each => each.name === form.name[0]) : undefined
+  const item = form.kind === 'column' ? cutting.items.find((each) => each.name === form.name[0]) : undefined
   if (item === undefined) return expr
   const primary = item.table?.kind === 'published' ? item.table.primaryKey : null
-  const determined = primary !== null && primary.every(column => cutting.keys.some(key => sameExpr(key.canonical, { kind: 'column', name: [item.name, column], star: false, at: -1 })))
+  const determined =
+    primary !== null &&
+    primary.every((column) => cutting.keys.some((key) => sameExpr(key.canonical, { kind: 'column', name: [item.name, column], star: false, at: -1 })))
   if (!determined) return refuse('block.ungrouped', { column: expr.name.join('.') }, expr.at)
   return released(cutting, `k${String(addKey(cutting, expr))}`, expr.at)
 }
 
 /** A subquery of the rest that speaks of the block's tables by name: its keys are released columns there too. */
 function insideQuery(query: Query, cutting: Cutting): Query {
-  const own = query.body.kind === 'select' ? new Set(query.body.from.flatMap(item => (item.kind === 'table' ? [item.alias?.name ?? item.name.at(-1) ?? ''] : item.kind === 'join' ? [] : [item.alias?.name ?? '']))) : new Set<string>()
+  const own =
+    query.body.kind === 'select'
+      ? new Set(
+          query.body.from.flatMap((item) =>
+            item.kind === 'table' ? [item.alias?.name ?? item.name.at(-1) ?? ''] : item.kind === 'join' ? [] : [item.alias?.name ?? ''],
+          ),
+        )
+      : new Set<string>()
   const within = (e: Expr): Expr => {
-    if (e.kind === 'column' && e.name.length > 1 && !own.has(e.name.at(-2) ?? '') && cutting.items.some(item => item.name === e.name.at(-2))) return rest(e, cutting)
-    return mapExpr(e, within, q => insideQuery(q, cutting))
+    if (e.kind === 'column' && e.name.length > 1 && !own.has(e.name.at(-2) ?? '') && cutting.items.some((item) => item.name === e.name.at(-2)))
+      return rest(e, cutting)
+    return mapExpr(e, within, (q) => insideQuery(q, cutting))
   }
-  return mapQuery(query, { expr: within, query: q => insideQuery(q, cutting) })
+  return mapQuery(query, { expr: within, query: (q) => insideQuery(q, cutting) })
 }
 
 /** ORDER BY: a position or a label of the list stays as it is. */
 function sorted(item: SortItem, select: Select, cutting: Cutting): SortItem {
   const by = item.by
   if (by.kind === 'constant') return item
-  if (by.kind === 'column' && by.name.length === 1 && select.targets.some(target => labelOf(target) === by.name[0])) return item
-  return mapOrder([item], e => rest(e, cutting))[0] ?? item
+  if (by.kind === 'column' && by.name.length === 1 && select.targets.some((target) => labelOf(target) === by.name[0])) return item
+  return mapOrder([item], (e) => rest(e, cutting))[0] ?? item
 }
 
 function blockOf(select: Select, cutting: Cutting, names: Names): CutBlock {
-  const targets = [...cutting.keys.map(key => key.written), ...cutting.calls.map(call => call.written)].map((value, i) => ({ value, label: i < cutting.keys.length ? `k${String(i)}` : `a${String(i - cutting.keys.length)}`, at: -1 }))
+  const targets = [...cutting.keys.map((key) => key.written), ...cutting.calls.map((call) => call.written)].map((value, i) => ({
+    value,
+    label: i < cutting.keys.length ? `k${String(i)}` : `a${String(i - cutting.keys.length)}`,
+    at: -1,
+  }))
   if (targets.length === 0) refuse('block.shape', { what: 'a SELECT without a key or an aggregate' })
-  const group = cutting.keys.map((_, i) => ({ kind: 'expression' as const, value: { kind: 'constant' as const, constant: { kind: 'integer' as const, value: String(i + 1) }, at: -1 } }))
-  const body: Select = { kind: 'select', distinct: null, targets, from: select.from, where: select.where, group, groupDistinct: false, having: null, windows: [] }
+  const group = cutting.keys.map((_, i) => ({
+    kind: 'expression' as const,
+    value: { kind: 'constant' as const, constant: { kind: 'integer' as const, value: String(i + 1) }, at: -1 },
+  }))
+  const body: Select = {
+    kind: 'select',
+    distinct: null,
+    targets,
+    from: select.from,
+    where: select.where,
+    group,
+    groupDistinct: false,
+    having: null,
+    windows: [],
+  }
   const bare: Query = { kind: 'query', with: null, body, order: [], limit: null, offset: null, withTies: false }
   const query: Query = { ...bare, with: commonFor(bare, names) }
   const { numbered, parameters } = renumber(query)
@@ -188,7 +235,9 @@ function commonFor(query: Query, names: Names): Query['with'] {
     }
   }
   follow(query)
-  const tables = [...names.rows.values()].filter(rows => used.has(rows.name)).map((rows): CommonTable => ({ name: rows.name, columns: rows.columns, materialized: 'default', query: rows.query, at: -1 }))
+  const tables = [...names.rows.values()]
+    .filter((rows) => used.has(rows.name))
+    .map((rows): CommonTable => ({ name: rows.name, columns: rows.columns, materialized: 'default', query: rows.query, at: -1 }))
   return tables.length === 0 ? null : { recursive: false, tables }
 }
 
@@ -205,6 +254,6 @@ function renumber(query: Query): { readonly numbered: Query; readonly parameters
 }
 
 function shadowable(query: Query, names: Names): readonly string[] {
-  const found = queryReads(query).filter(name => name.length === 1 && !names.rows.has(name[0] ?? '') && findTable(names.dataSet, name) !== null)
-  return [...new Set(found.map(name => name[0] ?? ''))]
+  const found = queryReads(query).filter((name) => name.length === 1 && !names.rows.has(name[0] ?? '') && findTable(names.dataSet, name) !== null)
+  return [...new Set(found.map((name) => name[0] ?? ''))]
 }

@@ -51,7 +51,8 @@ function mapStatement(statement: Statement, cut: (query: Query) => Query, dataSe
       notShadowing(statement, dataSet)
       return { ...statement, query: cut(statement.query) }
     case 'insert':
-      if (isPrivateName(statement.table, dataSet)) refuse('rows.locked', { what: 'INSERT', table: statement.table.join('.'), example: exampleFor(dataSet, null) })
+      if (isPrivateName(statement.table, dataSet))
+        refuse('rows.locked', { what: 'INSERT', table: statement.table.join('.'), example: exampleFor(dataSet, null) })
       return { ...statement, query: cut(statement.query) }
     case 'create-table-as':
       return { ...statement, into: notShadowing(statement.into, dataSet), statement: mapStatement(statement.statement, cut, dataSet) }
@@ -92,10 +93,16 @@ export function cutQuery(query: Query, names: Names, blocks: CutBlock[]): Query 
     if (body.kind === 'set-operation') for (const side of [body.left, body.right]) if (yieldsRows(side, inner)) showsRows(side, inner)
     return { ...mapQuery({ ...outer, with: null }, { expr, query: inside }), with: kept }
   }
-  if (!body.from.some(item => readsRows(item, inner))) return { ...mapQuery({ ...outer, with: null }, { expr, query: inside }), with: kept }
+  if (!body.from.some((item) => readsRows(item, inner))) return { ...mapQuery({ ...outer, with: null }, { expr, query: inside }), with: kept }
   if (isNeverTrue(body.where)) return emptied(query, names)
   const grouped = distinctAsGroups(body, query)
-  if (!aggregates(grouped, query.order.map(item => item.by))) return showsRows(query, inner)
+  if (
+    !aggregates(
+      grouped,
+      query.order.map((item) => item.by),
+    )
+  )
+    return showsRows(query, inner)
   return cutSelect({ ...outer, body: grouped }, grouped, inner, blocks, expr)
 }
 
@@ -107,9 +114,21 @@ function before(query: Query, table: CommonTable): Query['with'] {
 
 /** SELECT DISTINCT of columns is a list of groups. */
 function distinctAsGroups(select: Select, query: Query): Select {
-  if (select.distinct === null || select.distinct.length > 0 || aggregates(select, query.order.map(item => item.by))) return select
-  if (select.targets.some(target => containsWindow(target.value) || (target.value.kind === 'column' && target.value.star))) return select
-  return { ...select, distinct: null, group: select.targets.map((_, i) => ({ kind: 'expression', value: { kind: 'constant', constant: { kind: 'integer', value: String(i + 1) }, at: -1 } })) }
+  if (
+    select.distinct === null ||
+    select.distinct.length > 0 ||
+    aggregates(
+      select,
+      query.order.map((item) => item.by),
+    )
+  )
+    return select
+  if (select.targets.some((target) => containsWindow(target.value) || (target.value.kind === 'column' && target.value.star))) return select
+  return {
+    ...select,
+    distinct: null,
+    group: select.targets.map((_, i) => ({ kind: 'expression', value: { kind: 'constant', constant: { kind: 'integer', value: String(i + 1) }, at: -1 } })),
+  }
 }
 
 /** The refusal of rows, at the table that holds them. */
@@ -118,7 +137,7 @@ function showsRows(query: Query, names: Names): never {
   const table = firstPrivate(names.dataSet, query)?.name ?? [...names.rows.keys()][0] ?? ''
   const at = body.kind === 'select' ? placeOf(body.from) : -1
   const example = exampleFor(names.dataSet, query)
-  if (body.kind === 'select' && body.targets.some(target => containsWindow(target.value))) {
+  if (body.kind === 'select' && body.targets.some((target) => containsWindow(target.value))) {
     return refuse('rows.window', { table, example: `SELECT answer.*, sum(answer.count) OVER () FROM (${example}) AS answer` }, at)
   }
   return refuse('rows.private', { table, example }, at)

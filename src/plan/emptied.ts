@@ -45,7 +45,13 @@ export function emptied(query: Query, names: Names): Query {
     if (item.kind !== 'table') return item
     const table = findTable(names.dataSet, item.name)
     if (table?.kind !== 'private') return item
-    return { kind: 'subquery', query: noRows([...table.columns.values()]), lateral: false, alias: { name: item.alias?.name ?? table.name, columns: item.alias?.columns ?? [] }, at: item.at }
+    return {
+      kind: 'subquery',
+      query: noRows([...table.columns.values()]),
+      lateral: false,
+      alias: { name: item.alias?.name ?? table.name, columns: item.alias?.columns ?? [] },
+      at: item.at,
+    }
   }
   return inQuery(query)
 }
@@ -57,7 +63,11 @@ function noRows(columns: readonly DataColumn[]): Query {
     body: {
       kind: 'select',
       distinct: null,
-      targets: columns.map(column => ({ value: { kind: 'cast', arg: { kind: 'constant', constant: { kind: 'null' }, at: -1 }, type: typeOf(column), at: -1 }, label: column.name, at: -1 })),
+      targets: columns.map((column) => ({
+        value: { kind: 'cast', arg: { kind: 'constant', constant: { kind: 'null' }, at: -1 }, type: typeOf(column), at: -1 },
+        label: column.name,
+        at: -1,
+      })),
       from: [],
       where: { kind: 'constant', constant: { kind: 'boolean', value: false }, at: -1 },
       group: [],
@@ -74,6 +84,11 @@ function noRows(columns: readonly DataColumn[]): Query {
 
 function typeOf(column: DataColumn): TypeRef {
   const modifiers = /\((\d+)(?:,(\d+))?\)/.exec(column.type.printed)
-  const numbers = (modifiers?.slice(1) ?? []).filter(text => text !== undefined)
-  return { name: [column.type.schema, column.type.name], modifiers: numbers.map(value => ({ kind: 'constant', constant: { kind: 'integer', value }, at: -1 })), array: [], setof: false }
+  const numbers = (modifiers?.slice(1) ?? []).filter((text) => text !== undefined)
+  return {
+    name: [column.type.schema, column.type.name],
+    modifiers: numbers.map((value) => ({ kind: 'constant', constant: { kind: 'integer', value }, at: -1 })),
+    array: [],
+    setof: false,
+  }
 }

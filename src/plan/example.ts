@@ -12,7 +12,9 @@ export function exampleFor(dataSet: DataSet, query: Query | null): string {
 /** A statement that works on that table: a count, by a declared key where there is one. */
 export function exampleOf(dataSet: DataSet, table: PrivateTable): string {
   const name = typedName(dataSet, table).split('.').map(quoteName).join('.')
-  const key = [...table.columns.values()].find(column => column.role === 'listed' && (column.values !== null || column.valuesFrom !== null || column.type.name === 'bool'))
+  const key = [...table.columns.values()].find(
+    (column) => column.role === 'listed' && (column.values !== null || column.valuesFrom !== null || column.type.name === 'bool'),
+  )
   if (key === undefined) return `SELECT count(*) FROM ${name}`
   return `SELECT ${quoteName(key.name)}, count(*) FROM ${name} GROUP BY ${quoteName(key.name)}`
 }

@@ -15,7 +15,8 @@ export function domainOf(scalar: Scalar, key: number, scans: readonly Scan[]): L
     const from = column?.valuesFrom ?? null
     return from === null ? null : { kind: 'column', key, table: from.table, column: from.column, nullable: scalar.nullable }
   }
-  if (node.kind === 'apply' && (node.form === 'date-trunc' || node.form === 'extract') && isClamped(scalar) && isBetweenEnds(scalar)) return steps(scalar, node, key)
+  if (node.kind === 'apply' && (node.form === 'date-trunc' || node.form === 'extract') && isClamped(scalar) && isBetweenEnds(scalar))
+    return steps(scalar, node, key)
   return null
 }
 
@@ -39,7 +40,14 @@ function steps(scalar: Scalar, node: Apply, key: number): ListFactor {
   if (node.form === 'date-trunc') return { kind: 'instants', key, type: scalar.type, low, high, unit, nullable: scalar.nullable }
   const fixed = fixedFields[unit]
   const end = (text: string): Scalar => ({ ...scalar, node: { kind: 'constant', text }, nullable: false, range: null })
-  return { kind: 'numbers', key, type: scalar.type, low: fixed === undefined ? low : end(fixed[0]), high: fixed === undefined ? high : end(fixed[1]), nullable: scalar.nullable }
+  return {
+    kind: 'numbers',
+    key,
+    type: scalar.type,
+    low: fixed === undefined ? low : end(fixed[0]),
+    high: fixed === undefined ? high : end(fixed[1]),
+    nullable: scalar.nullable,
+  }
 }
 
 /** Values known as texts: declared ones, booleans, and what CASE and coalesce make of constants and declared ones. */
@@ -64,5 +72,5 @@ function withNull(texts: readonly string[], nullable: boolean): readonly (string
 }
 
 export function columnOf(scan: number, name: string, scans: readonly Scan[]): DataColumn | null {
-  return scans.find(each => each.index === scan)?.table.columns.get(name) ?? null
+  return scans.find((each) => each.index === scan)?.table.columns.get(name) ?? null
 }

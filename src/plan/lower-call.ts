@@ -16,7 +16,8 @@ export function lowerCall(call: Call, args: readonly Scalar[], context: Context)
   const name = call.name.at(-1) ?? ''
   const written = call.name.join('.')
   if (call.name.length > 1 && call.name[0] !== 'pg_catalog') refuse('expr.function', { what: written }, call.at)
-  if (call.star || call.distinct || call.variadic || call.within || call.order.length > 0 || call.filter !== null) refuse('expr.function', { what: written }, call.at)
+  if (call.star || call.distinct || call.variadic || call.within || call.order.length > 0 || call.filter !== null)
+    refuse('expr.function', { what: written }, call.at)
   const [first, second] = args
   if (nows.has(name) && first === undefined) return lowerNow(context, call.at)
   if (first !== undefined && second !== undefined && args.length === 2) {
@@ -35,10 +36,14 @@ export function lowerCall(call: Call, args: readonly Scalar[], context: Context)
 }
 
 function word(arg: Scalar, name: string, at: number): string {
-  return arg.node.kind === 'constant' && arg.node.text !== null ? arg.node.text : refuse('expr.unsupported', { what: `${name} with a unit that is not a constant` }, at)
+  return arg.node.kind === 'constant' && arg.node.text !== null
+    ? arg.node.text
+    : refuse('expr.unsupported', { what: `${name} with a unit that is not a constant` }, at)
 }
 
 function places(arg: Scalar, at: number): number {
   const text = arg.node.kind === 'constant' ? (arg.node.text ?? '') : ''
-  return /^([0-9]|1[0-2])$/.test(text) ? Array.from({ length: 13 }, (_, i) => i).findIndex(i => i.toString() === text) : refuse('expr.unsupported', { what: 'rounding to a number of places that is not a constant from 0 to 12' }, at)
+  return /^([0-9]|1[0-2])$/.test(text)
+    ? Array.from({ length: 13 }, (_, i) => i).findIndex((i) => i.toString() === text)
+    : refuse('expr.unsupported', { what: 'rounding to a number of places that is not a constant from 0 to 12' }, at)
 }

@@ -19,9 +19,15 @@ export interface Lowered {
 
 /** A FROM list: its items side by side. */
 export function lowerFromList(items: readonly FromItem[], context: Context): Lowered {
-  const [first, ...rest] = items.map(item => lowerFrom(item, context))
+  const [first, ...rest] = items.map((item) => lowerFrom(item, context))
   if (first === undefined) return refuse('block.shape', { what: 'an aggregate without FROM' })
-  return rest.reduce((left, right) => ({ source: { kind: 'join', type: 'inner', left: left.source, right: right.source, on: [], at: -1 }, scope: besides(left.scope, right.scope) }), first)
+  return rest.reduce(
+    (left, right) => ({
+      source: { kind: 'join', type: 'inner', left: left.source, right: right.source, on: [], at: -1 },
+      scope: besides(left.scope, right.scope),
+    }),
+    first,
+  )
 }
 
 function lowerFrom(item: FromItem, context: Context): Lowered {
@@ -43,12 +49,16 @@ function lowerFrom(item: FromItem, context: Context): Lowered {
 function lowerTable(item: Extract<FromItem, { kind: 'table' }>, context: Context): Lowered {
   const bare = item.name.at(-1) ?? ''
   const common = item.name.length === 1 ? context.commonTables.get(bare) : undefined
-  if (common !== undefined) return lowerDerived(common.query, item.alias ?? { name: bare, columns: [] }, { ...context, commonTables: common.sees }, item.at, common.columns)
+  if (common !== undefined)
+    return lowerDerived(common.query, item.alias ?? { name: bare, columns: [] }, { ...context, commonTables: common.sees }, item.at, common.columns)
   const table = findTable(context.dataSet, item.name)
   if (table === null) return refuse('block.mixed', { what: `"${item.name.join('.')}"` }, item.at)
   const scan: Scan = { index: context.scans.length, table, at: item.at }
   context.scans.push(scan)
-  const columns = [...table.columns.values()].map((column, i): VisibleColumn => ({ name: item.alias?.columns[i] ?? column.name, scalar: lowerColumn(scan.index, column, item.at) }))
+  const columns = [...table.columns.values()].map((column, i): VisibleColumn => ({
+    name: item.alias?.columns[i] ?? column.name,
+    scalar: lowerColumn(scan.index, column, item.at),
+  }))
   const scope: Scope = { items: [{ name: item.alias?.name ?? table.name, schema: item.alias === null ? table.schema : '', columns }], star: columns }
   return { source: { kind: 'scan', scan }, scope }
 }
@@ -65,7 +75,9 @@ function lowerJoin(item: Extract<FromItem, { kind: 'join' }>, context: Context):
   const [first, second] = [lowerFrom(item.left, context), lowerFrom(item.right, context)]
   const left = item.type === 'right' ? { ...first, scope: padded(first.scope, item.at) } : first
   const right = item.type === 'left' ? { ...second, scope: padded(second.scope, item.at) } : second
-  const names = item.natural ? first.scope.star.map(column => column.name).filter(name => second.scope.star.some(other => other.name === name)) : item.using
+  const names = item.natural
+    ? first.scope.star.map((column) => column.name).filter((name) => second.scope.star.some((other) => other.name === name))
+    : item.using
   const merged = merge(names, left.scope, right.scope, item.type === 'right', item.at)
   const both = besides(first.scope, second.scope)
   const on = [...merged.tests, ...(item.on === null ? [] : conjuncts(lowerCondition(item.on, both, context)))]
@@ -82,10 +94,17 @@ function named(alias: Alias | null, scope: Scope): Scope {
 }
 
 /** USING and NATURAL: the shared columns come once, first, from the side that is never padded. */
-function merge(names: readonly string[], left: Scope, right: Scope, fromRight: boolean, at: number): { readonly tests: readonly Scalar[]; readonly star: readonly VisibleColumn[] } {
-  const pick = (scope: Scope, name: string): VisibleColumn => scope.star.find(column => column.name === name) ?? refuse('block.shape', { what: `USING (${name}), which one side lacks,` }, at)
-  const tests = names.map(name => compare('=', pick(left, name).scalar, pick(right, name).scalar, at))
-  const shared = names.map(name => pick(fromRight ? right : left, name))
-  const others = [...left.star, ...right.star].filter(column => !names.includes(column.name))
+function merge(
+  names: readonly string[],
+  left: Scope,
+  right: Scope,
+  fromRight: boolean,
+  at: number,
+): { readonly tests: readonly Scalar[]; readonly star: readonly VisibleColumn[] } {
+  const pick = (scope: Scope, name: string): VisibleColumn =>
+    scope.star.find((column) => column.name === name) ?? refuse('block.shape', { what: `USING (${name}), which one side lacks,` }, at)
+  const tests = names.map((name) => compare('=', pick(left, name).scalar, pick(right, name).scalar, at))
+  const shared = names.map((name) => pick(fromRight ? right : left, name))
+  const others = [...left.star, ...right.star].filter((column) => !names.includes(column.name))
   return { tests, star: [...shared, ...others] }
 }

@@ -61,7 +61,8 @@ function compute(sign: '+' | '-' | '*' | '/' | '%', left: Scalar, right: Scalar,
       if (sign === '-' && a.type.family === 'date' && b.type.family === 'date') return daysBetween(a, b, at)
       if (sign === '-' && a.type.family === b.type.family) return timeBetween(a, b, at)
     }
-    if (sign === '+' && instants.has(b.type.family) && (a.type.family === 'interval' || (b.type.family === 'date' && a.type.family === 'integer'))) return shift('+', b, a, at)
+    if (sign === '+' && instants.has(b.type.family) && (a.type.family === 'interval' || (b.type.family === 'date' && a.type.family === 'integer')))
+      return shift('+', b, a, at)
     if (a.type.family === 'interval' && b.type.family === 'interval') refuse('expr.unsupported', { what: 'interval arithmetic' }, at)
   }
   return refuse('expr.unsupported', { what: `${sign} between ${a.type.name} and ${b.type.name}` }, at)

@@ -25,7 +25,8 @@ export function lowerRows(query: Query, context: Context, at: number): Rows {
   const body = query.body
   if (body.kind === 'values') return lowerValues(body, inner, at)
   if (body.kind === 'set-operation') return refuse('block.shape', { what: `${body.word.toUpperCase()} over rows` }, at)
-  if (body.group.length > 0 || body.having !== null || body.targets.some(target => containsAggregate(target.value))) refuse('block.mixed', { what: 'the result of another aggregate query' }, at)
+  if (body.group.length > 0 || body.having !== null || body.targets.some((target) => containsAggregate(target.value)))
+    refuse('block.mixed', { what: 'the result of another aggregate query' }, at)
   if (body.distinct !== null) refuse('block.shape', { what: 'DISTINCT over rows' }, at)
   if (body.windows.length > 0) refuse('rows.window', { table: 'the derived table' }, at)
   return lowerSelect(body, inner)
@@ -42,7 +43,7 @@ export function withTables(query: Query, context: Context, at: number): Context 
 
 function lowerSelect(select: Select, context: Context): Rows {
   const from = lowerFromList(select.from, context)
-  const columns = select.targets.flatMap(target => lowerTarget(target, from.scope, context))
+  const columns = select.targets.flatMap((target) => lowerTarget(target, from.scope, context))
   if (select.where === null) return { source: from.source, columns }
   return { source: { kind: 'filter', input: from.source, tests: conjuncts(lowerCondition(select.where, from.scope, context)) }, columns }
 }
@@ -51,7 +52,7 @@ function lowerTarget(target: Target, scope: Scope, context: Context): readonly V
   const value = target.value
   if (value.kind === 'column' && value.star) {
     if (value.name.length === 0) return scope.star
-    const item = scope.items.find(each => each.name === value.name.at(-1))
+    const item = scope.items.find((each) => each.name === value.name.at(-1))
     return item?.columns ?? refuse('block.correlated', { column: `${value.name.join('.')}.*` }, value.at)
   }
   const scalar: Scalar = lowerExpr(value, scope, context)

@@ -3,7 +3,24 @@ import { scalarType, scalarTypeOf, type ScalarType } from '../catalog/scalar-typ
 import type { DataSet } from '../policy/data-set.ts'
 import type { TypeRef } from '../sql/tree.ts'
 
-const spellings: Readonly<Record<string, string>> = { bool: 'bool', int2: 'int2', int4: 'int4', int8: 'int8', numeric: 'numeric', float4: 'float4', float8: 'float8', text: 'text', varchar: 'varchar', bpchar: 'bpchar', date: 'date', timestamp: 'timestamp', timestamptz: 'timestamptz', time: 'time', interval: 'interval', uuid: 'uuid' }
+const spellings: Readonly<Record<string, string>> = {
+  bool: 'bool',
+  int2: 'int2',
+  int4: 'int4',
+  int8: 'int8',
+  numeric: 'numeric',
+  float4: 'float4',
+  float8: 'float8',
+  text: 'text',
+  varchar: 'varchar',
+  bpchar: 'bpchar',
+  date: 'date',
+  timestamp: 'timestamp',
+  timestamptz: 'timestamptz',
+  time: 'time',
+  interval: 'interval',
+  uuid: 'uuid',
+}
 
 /** A type named in an expression over private rows. Modifiers would round or cut: refused. */
 export function lowerType(type: TypeRef, dataSet: DataSet, at: number): ScalarType {

@@ -37,7 +37,13 @@ export function own(source: Source, tests: readonly Scalar[], context: Context):
   sameRows(expanded, builder.classes)
   const step = walk(expanded, builder)
   check(step.person !== null, 'a block reads a private table')
-  return { source: { kind: 'filter', input: step.source, tests }, person: step.person, classes: builder.classes, directed: builder.directed, paddedScans: builder.padded }
+  return {
+    source: { kind: 'filter', input: step.source, tests },
+    person: step.person,
+    classes: builder.classes,
+    directed: builder.directed,
+    paddedScans: builder.padded,
+  }
 }
 
 interface Builder {
@@ -130,12 +136,12 @@ function hasPerson(source: Source): boolean {
 /** Two scans of one table that agree on a unique column are the same row, so they have the same owner. */
 function sameRows(source: Source, classes: ColumnClasses): void {
   const scans = [...scansIn(source)]
-  for (let changed = true; changed; ) {
+  for (let changed = true; changed;) {
     changed = false
     for (const a of scans)
       for (const b of scans) {
         if (a.index >= b.index || a.table.kind !== 'private' || a.table !== b.table) continue
-        const agree = a.table.uniqueKeys.some(key => key.every(column => classes.same({ scan: a.index, column }, { scan: b.index, column })))
+        const agree = a.table.uniqueKeys.some((key) => key.every((column) => classes.same({ scan: a.index, column }, { scan: b.index, column })))
         if (!agree) continue
         for (const column of a.table.columns.keys()) changed = classes.merge({ scan: a.index, column }, { scan: b.index, column }) || changed
       }

@@ -18,10 +18,10 @@ export function paddingValue(scalar: Scalar, scans: ReadonlySet<number>): Paddin
       return scalar.range !== null && scalar.range.low.isZero() && scalar.range.high.isZero() ? 'zero' : 'unknown'
     case 'apply': {
       const args = node.args
-      if (formOf(node.form).strict) return args.some(arg => of(arg) === 'null') ? 'null' : 'unknown'
+      if (formOf(node.form).strict) return args.some((arg) => of(arg) === 'null') ? 'null' : 'unknown'
       switch (node.form) {
         case 'and':
-          return args.some(arg => of(arg) === 'false') ? 'false' : args.some(arg => of(arg) === 'null') ? 'null' : 'unknown'
+          return args.some((arg) => of(arg) === 'false') ? 'false' : args.some((arg) => of(arg) === 'null') ? 'null' : 'unknown'
         case 'is-not-null':
           return of(args[0]) === 'null' ? 'false' : 'unknown'
         case 'is-boolean':
@@ -29,7 +29,7 @@ export function paddingValue(scalar: Scalar, scans: ReadonlySet<number>): Paddin
         case 'in':
           return of(args[0]) === 'null' ? 'null' : 'unknown'
         case 'coalesce':
-          return args.map(of).find(value => value !== 'null') ?? 'null'
+          return args.map(of).find((value) => value !== 'null') ?? 'null'
         case 'case': {
           for (let i = 0; i + 1 < args.length; i += 2) {
             const test = of(args[i])

@@ -11,7 +11,7 @@ export function queryReads(query: Query): readonly Name[] {
       visit(item.right)
     }
   }
-  eachQuery(query, inner => {
+  eachQuery(query, (inner) => {
     if (inner.body.kind === 'select') for (const item of inner.body.from) visit(item)
   })
   return found

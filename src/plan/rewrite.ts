@@ -32,7 +32,7 @@ export function rewritten(cut: Cut, types: readonly BlockTypes[]): string {
   const expr = (e: Expr): Expr => mapExpr(e, expr, query)
   const query = (q: Query): Query => {
     const mapped = mapQuery(q, { expr, query })
-    return mapped.body.kind === 'select' ? { ...mapped, body: { ...mapped.body, from: mapped.body.from.map(item => place(item, pulls)) } } : mapped
+    return mapped.body.kind === 'select' ? { ...mapped, body: { ...mapped.body, from: mapped.body.from.map((item) => place(item, pulls)) } } : mapped
   }
   return printStatement(inStatement(cut.statement, query))
 }
@@ -74,7 +74,12 @@ function place(item: FromItem, pulls: readonly FromItem[]): FromItem {
 /** pg_catalog.jsonb_to_recordset(hedgerow.pull(block, arguments, siblings, names)) with the described columns. */
 function pull(block: CutBlock, types: BlockTypes, blockSql: string, siblings: Expr): FromItem {
   const args = block.parameters.map((number, i): Expr => ({ kind: 'cast', arg: { kind: 'parameter', number, at: -1 }, type: at(types.parameters, i), at: -1 }))
-  const names: Expr = { kind: 'cast', arg: { kind: 'array', items: block.names.map(text), at: -1 }, type: { name: ['pg_catalog', 'text'], modifiers: [], array: [-1], setof: false }, at: -1 }
+  const names: Expr = {
+    kind: 'cast',
+    arg: { kind: 'array', items: block.names.map(text), at: -1 },
+    type: { name: ['pg_catalog', 'text'], modifiers: [], array: [-1], setof: false },
+    at: -1,
+  }
   const pulled: Expr = { ...call('pull', [text(blockSql), call('jsonb_build_array', args), siblings, names]), name: ['hedgerow', 'pull'] }
   return {
     kind: 'function',
@@ -93,7 +98,17 @@ export function refusedText(marker: string): string {
   const query: Query = {
     kind: 'query',
     with: null,
-    body: { kind: 'select', distinct: null, targets: [{ value: { ...call(marker, []), name: ['hedgerow', marker] }, label: '', at: -1 }], from: [], where: null, group: [], groupDistinct: false, having: null, windows: [] },
+    body: {
+      kind: 'select',
+      distinct: null,
+      targets: [{ value: { ...call(marker, []), name: ['hedgerow', marker] }, label: '', at: -1 }],
+      from: [],
+      where: null,
+      group: [],
+      groupDistinct: false,
+      having: null,
+      windows: [],
+    },
     order: [],
     limit: null,
     offset: null,

@@ -15,7 +15,7 @@ export interface Names {
 
 /** Whether a SELECT aggregates: by an aggregate call of its own, GROUP BY or HAVING. */
 export function aggregates(select: Select, order: readonly Expr[]): boolean {
-  return select.group.length > 0 || select.having !== null || select.targets.some(target => containsAggregate(target.value)) || order.some(containsAggregate)
+  return select.group.length > 0 || select.having !== null || select.targets.some((target) => containsAggregate(target.value)) || order.some(containsAggregate)
 }
 
 /** Whether a query yields rows of persons as they are: it would have to stand inside an aggregate. */
@@ -24,8 +24,15 @@ export function yieldsRows(query: Query, names: Names): boolean {
   const body = query.body
   if (body.kind === 'values') return false
   if (body.kind === 'set-operation') return yieldsRows(body.left, inner) || yieldsRows(body.right, inner)
-  if (aggregates(body, query.order.map(item => item.by)) || body.distinct !== null) return false
-  return body.from.some(item => readsRows(item, inner))
+  if (
+    aggregates(
+      body,
+      query.order.map((item) => item.by),
+    ) ||
+    body.distinct !== null
+  )
+    return false
+  return body.from.some((item) => readsRows(item, inner))
 }
 
 /** Whether an item of FROM reads rows of persons. */
@@ -59,7 +66,11 @@ export function withNames(query: Query, names: Names): Names {
   for (const table of query.with?.tables ?? []) {
     const rows = yieldsRows(table.query, inner) || isPlainRows(table.query, inner)
     inner = rows
-      ? { ...inner, rows: new Map([...inner.rows, [table.name, { name: table.name, columns: table.columns, query: table.query, sees: inner.rows }]]), finished: new Set([...inner.finished].filter(name => name !== table.name)) }
+      ? {
+          ...inner,
+          rows: new Map([...inner.rows, [table.name, { name: table.name, columns: table.columns, query: table.query, sees: inner.rows }]]),
+          finished: new Set([...inner.finished].filter((name) => name !== table.name)),
+        }
       : { ...inner, rows: without(inner.rows, table.name), finished: new Set([...inner.finished, table.name]) }
   }
   return inner
@@ -71,6 +82,12 @@ function isPlainRows(query: Query, names: Names): boolean {
   if (query.limit !== null || query.offset !== null || query.with !== null) return false
   if (body.kind === 'values') return true
   if (body.kind === 'set-operation' || body.distinct !== null || body.windows.length > 0) return false
-  if (aggregates(body, query.order.map(item => item.by))) return false
-  return queryReads(query).every(name => (name.length === 1 && names.rows.has(name[0] ?? '')) || findTable(names.dataSet, name) !== null)
+  if (
+    aggregates(
+      body,
+      query.order.map((item) => item.by),
+    )
+  )
+    return false
+  return queryReads(query).every((name) => (name.length === 1 && names.rows.has(name[0] ?? '')) || findTable(names.dataSet, name) !== null)
 }

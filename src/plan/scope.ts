@@ -27,14 +27,14 @@ export function findColumn(scope: Scope, name: readonly string[]): Scalar | null
   const column = name.at(-1)
   if (column === undefined) return null
   if (name.length === 1) {
-    const found = scope.star.filter(each => each.name === column)
+    const found = scope.star.filter((each) => each.name === column)
     return found[0]?.scalar ?? null
   }
   const table = name.at(-2)
   const schema = name.at(-3)
   for (const item of scope.items) {
     if (item.name !== table || (schema !== undefined && item.schema !== schema)) continue
-    return item.columns.find(each => each.name === column)?.scalar ?? null
+    return item.columns.find((each) => each.name === column)?.scalar ?? null
   }
   return null
 }
@@ -50,5 +50,5 @@ export function padded(scope: Scope, at: number): Scope {
     if (column.scalar.node.kind !== 'column') refuse('block.shape', { what: 'a computed column on the padded side of an outer join' }, at)
     return { name: column.name, scalar: { ...column.scalar, nullable: true } }
   }
-  return { items: scope.items.map(item => ({ ...item, columns: item.columns.map(pad) })), star: scope.star.map(pad) }
+  return { items: scope.items.map((item) => ({ ...item, columns: item.columns.map(pad) })), star: scope.star.map(pad) }
 }

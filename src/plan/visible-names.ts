@@ -14,14 +14,14 @@ export interface NamedItem {
 
 /** The items of a FROM list, joins taken apart. */
 export function namedItems(items: readonly FromItem[], dataSet: DataSet, common: ReadonlyMap<string, RowsTable>): readonly NamedItem[] {
-  return items.flatMap(item => namedItem(item, dataSet, common))
+  return items.flatMap((item) => namedItem(item, dataSet, common))
 }
 
 function namedItem(item: FromItem, dataSet: DataSet, common: ReadonlyMap<string, RowsTable>): readonly NamedItem[] {
   switch (item.kind) {
     case 'join': {
       const sides = [...namedItem(item.left, dataSet, common), ...namedItem(item.right, dataSet, common)]
-      return item.alias === null ? sides : [{ name: item.alias.name, columns: sides.flatMap(side => side.columns), table: null }]
+      return item.alias === null ? sides : [{ name: item.alias.name, columns: sides.flatMap((side) => side.columns), table: null }]
     }
     case 'table': {
       const bare = item.name.at(-1) ?? ''
@@ -50,10 +50,10 @@ export function columnsOf(query: Query, dataSet: DataSet, common: ReadonlyMap<st
   if (body.kind === 'set-operation') return columnsOf(body.left, dataSet, common)
   if (body.kind === 'values') return (body.rows[0] ?? []).map((_, i) => `column${String(i + 1)}`)
   const items = namedItems(body.from, dataSet, common)
-  return body.targets.flatMap(target => {
+  return body.targets.flatMap((target) => {
     const value = target.value
     if (value.kind !== 'column' || !value.star) return [labelOf(target)]
     const wanted = value.name.at(-1)
-    return items.filter(item => wanted === undefined || item.name === wanted).flatMap(item => item.columns)
+    return items.filter((item) => wanted === undefined || item.name === wanted).flatMap((item) => item.columns)
   })
 }

@@ -83,7 +83,7 @@ export async function startHedgerow(options: HedgerowOptions): Promise<Hedgerow>
   try {
     const vault = await connectVault({ url: options.vaultUrl, statementTimeoutMs: options.statementTimeoutMs, maxConnections: vaultPlaces, log })
     closers.push(() => vault.close())
-    const load = async () => loadPolicies(options.policies, schemas => vault.session(client => readCatalog(client, schemas)))
+    const load = async () => loadPolicies(options.policies, (schemas) => vault.session((client) => readCatalog(client, schemas)))
     const first = await load()
     if (first.kind === 'complaints') throw new PoliciesUnfit(first.complaints)
     for (const warning of first.warnings) log('warn', 'policy.warning', { text: printComplaint(warning) })
@@ -113,10 +113,25 @@ export async function startHedgerow(options: HedgerowOptions): Promise<Hedgerow>
       inForce: current,
     })
     const password = secret('pull').toString('hex')
-    const pulls = await servePulls({ host: options.pull.listen, port: options.pull.port, user: 'hedgerow', password, answer, log, ceilings: pullCeilings, loginTimeoutMs: 10_000 })
+    const pulls = await servePulls({
+      host: options.pull.listen,
+      port: options.pull.port,
+      user: 'hedgerow',
+      password,
+      answer,
+      log,
+      ceilings: pullCeilings,
+      loginTimeoutMs: 10_000,
+    })
     closers.push(() => pulls.close())
     const install = async (policies: Policies): Promise<void> => {
-      const report = await installLobby({ lobbyUrl: options.lobbyUrl, ledgerUrl: options.ledgerUrl, vaultUrl: options.vaultUrl, policies, pull: { host: options.pull.host, port: pulls.port, password } })
+      const report = await installLobby({
+        lobbyUrl: options.lobbyUrl,
+        ledgerUrl: options.ledgerUrl,
+        vaultUrl: options.vaultUrl,
+        policies,
+        pull: { host: options.pull.host, port: pulls.port, password },
+      })
       for (const warning of report.warnings) log('warn', 'lobby.warning', { text: warning })
     }
     await install(inForce.policies)

@@ -23,7 +23,7 @@ export const systemClock: Clock = {
 }
 
 /** The system's generator: noise and salts come from nowhere else. */
-export const systemRandom: RandomBytes = count => randomBytes(count)
+export const systemRandom: RandomBytes = (count) => randomBytes(count)
 
 /** One JSON object a line. */
 export function lineLog(write: (line: string) => void): Log {

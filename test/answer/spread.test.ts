@@ -30,7 +30,12 @@ afterAll(() => server.stop())
 test('variances and deviations without noise are those PostgreSQL gives, over one row and many rows a person', async () => {
   const client = await server.connect('ana')
   const vault = await server.vault()
-  for (const [column, table] of [['fare', 'trips'], ['delay', 'trips'], ['speed', 'trips'], ['age', 'riders']] as const) {
+  for (const [column, table] of [
+    ['fare', 'trips'],
+    ['delay', 'trips'],
+    ['speed', 'trips'],
+    ['age', 'riders'],
+  ] as const) {
     const sql = `SELECT var_pop(${column}), var_samp(${column}), variance(${column}), stddev_pop(${column}), stddev_samp(${column}), stddev(${column}) FILTER (WHERE ${column} > 1) AS filtered FROM ${table}`
     const own = (await client.query<Record<string, string>>(sql)).rows[0] ?? {}
     const exact = (await vault.query<Record<string, string>>(sql)).rows[0] ?? {}

@@ -97,11 +97,12 @@ export async function testHedgerow(options: TestHedgerowOptions): Promise<TestHe
     logged,
     policies: directory,
     vault: () => connect({ connectionString: vaultUrl }),
-    admin: database => connect({ connectionString: withDatabase(backend.url, database) }),
+    admin: (database) => connect({ connectionString: withDatabase(backend.url, database) }),
     url,
-    connect: (analyst, config = {}) => connect({ connectionString: url(analyst), types: { getTypeParser: () => (value: string) => value } as unknown as pg.CustomTypesConfig, ...config }),
+    connect: (analyst, config = {}) =>
+      connect({ connectionString: url(analyst), types: { getTypeParser: () => (value: string) => value } as unknown as pg.CustomTypesConfig, ...config }),
     stop: async () => {
-      await Promise.all(open.map(client => client.end().catch(() => undefined)))
+      await Promise.all(open.map((client) => client.end().catch(() => undefined)))
       await hedgerow.close()
       await backend.stop()
       await rm(directory, { recursive: true, force: true })
@@ -116,6 +117,7 @@ function promptPullClock(): Clock {
 
 async function analystsText(options: TestHedgerowOptions, dataSet: string): Promise<string> {
   const lines: string[] = []
-  for (const [name, cap] of Object.entries(options.analysts)) lines.push(`  ${name}:\n    login: "${await scramVerifier(passwordOf(name), randomBytes(16))}"\n    data: { ${dataSet}: ${cap} }`)
+  for (const [name, cap] of Object.entries(options.analysts))
+    lines.push(`  ${name}:\n    login: "${await scramVerifier(passwordOf(name), randomBytes(16))}"\n    data: { ${dataSet}: ${cap} }`)
   return `analysts:\n${lines.join('\n')}\neveryone: { ${dataSet}: ${options.everyone} }\n`
 }

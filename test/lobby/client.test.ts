@@ -27,14 +27,18 @@ afterAll(async () => {
 
 describe('a lobby made by a role with CREATEROLE and CREATEDB', () => {
   test('says what a superuser has to do first, then works and says what stayed open', async () => {
-    await expect(lobby.install({ lobbyUrl, policies })).rejects.toThrow(/run there: CREATE EXTENSION dblink SCHEMA hedgerow_inside; GRANT USAGE ON FOREIGN DATA WRAPPER dblink_fdw TO/)
+    await expect(lobby.install({ lobbyUrl, policies })).rejects.toThrow(
+      /run there: CREATE EXTENSION dblink SCHEMA hedgerow_inside; GRANT USAGE ON FOREIGN DATA WRAPPER dblink_fdw TO/,
+    )
     const admin = await lobby.admin('ferries')
     await admin.query('CREATE EXTENSION dblink SCHEMA hedgerow_inside; GRANT USAGE ON FOREIGN DATA WRAPPER dblink_fdw TO porter')
     const report = await lobby.install({ lobbyUrl, policies })
     const warnings = report.warnings.join('\n')
-    for (const part of ['GRANT SET ON PARAMETER temp_file_limit', 'pg_advisory_lock(bigint)', 'REVOKE CONNECT ON DATABASE "ferry_ledger" FROM PUBLIC']) expect(warnings).toContain(part)
+    for (const part of ['GRANT SET ON PARAMETER temp_file_limit', 'pg_advisory_lock(bigint)', 'REVOKE CONNECT ON DATABASE "ferry_ledger" FROM PUBLIC'])
+      expect(warnings).toContain(part)
     await admin.query(/have a superuser run in ferries: (.*)/.exec(warnings)?.[1] ?? '')
-    for (const database of ['postgres', 'template1', 'template0', 'ferry_vault', 'ferry_ledger']) await admin.query(`REVOKE CONNECT, TEMPORARY ON DATABASE ${database} FROM PUBLIC`)
+    for (const database of ['postgres', 'template1', 'template0', 'ferry_vault', 'ferry_ledger'])
+      await admin.query(`REVOKE CONNECT, TEMPORARY ON DATABASE ${database} FROM PUBLIC`)
     for (const [, parameter] of warnings.matchAll(/GRANT SET ON PARAMETER (\S+)/g)) await admin.query(`GRANT SET ON PARAMETER ${parameter} TO porter`)
     expect((await lobby.install({ lobbyUrl, policies })).warnings).toEqual([])
   })
@@ -56,8 +60,9 @@ describe('describing a text', () => {
     client = connectLobby({ lobbyUrl, connections: 2 })
   })
 
-  test('gives parameters and columns with PostgreSQL\'s types, and runs nothing', async () => {
-    const text = 'SELECT count(*) AS n, mood, sum(fare_pence), avg(fare_pence), max(boarded_at), min(from_pier) FROM riders JOIN trips USING (rider_id) WHERE birth_year > $1 AND mood = $2 GROUP BY mood'
+  test("gives parameters and columns with PostgreSQL's types, and runs nothing", async () => {
+    const text =
+      'SELECT count(*) AS n, mood, sum(fare_pence), avg(fare_pence), max(boarded_at), min(from_pier) FROM riders JOIN trips USING (rider_id) WHERE birth_year > $1 AND mood = $2 GROUP BY mood'
     expect(await client.describe('ferries', text, [])).toEqual({
       kind: 'described',
       parameters: ['integer', 'public.mood'],
@@ -71,13 +76,26 @@ describe('describing a text', () => {
       ],
     })
     const described = await client.describe('ferries', 'SELECT $1 AS a, 1.5::numeric(10,2) AS b, pg_sleep(60)', [23])
-    expect(described).toMatchObject({ kind: 'described', parameters: ['integer'], columns: [{ name: 'a', type: 'integer' }, { name: 'b', type: 'numeric(10,2)' }, { name: 'pg_sleep', type: 'void' }] })
+    expect(described).toMatchObject({
+      kind: 'described',
+      parameters: ['integer'],
+      columns: [
+        { name: 'a', type: 'integer' },
+        { name: 'b', type: 'numeric(10,2)' },
+        { name: 'pg_sleep', type: 'void' },
+      ],
+    })
     expect(await client.describe('ferries', 'SET row_security = off', [])).toEqual({ kind: 'described', parameters: [], columns: [] })
     expect(await client.describe('ferries', 'SELECT rider_id FROM riders', [])).toMatchObject({ kind: 'described' })
   })
 
-  test('passes PostgreSQL\'s complaint on, with its place', async () => {
-    expect(await client.describe('ferries', 'SELECT nope FROM riders', [])).toEqual({ kind: 'complaint', sqlstate: '42703', message: 'column "nope" does not exist', position: 8 })
+  test("passes PostgreSQL's complaint on, with its place", async () => {
+    expect(await client.describe('ferries', 'SELECT nope FROM riders', [])).toEqual({
+      kind: 'complaint',
+      sqlstate: '42703',
+      message: 'column "nope" does not exist',
+      position: 8,
+    })
     expect(await client.describe('ferries', 'SELECT full_name FROM riders', [])).toMatchObject({ kind: 'complaint', sqlstate: '42703' })
     expect(await client.describe('ferries', 'SELEC 1', [])).toMatchObject({ kind: 'complaint', sqlstate: '42601', position: 1 })
     expect(await client.describe('ferries', 'SELECT 1; SELECT 2', [])).toMatchObject({ kind: 'complaint', sqlstate: '42601' })
@@ -101,7 +119,9 @@ describe('reading published data', () => {
       ['Northbank', '1901-05-01', 'NaN', '\\x00ff', '2025-06-01 17:45:00.000001+05:45', '0.30000000000000004'],
     ])
     expect(await client.published('ferries', text, ['{Northbank,Eastquay}'], 'UTC', 1)).toBe('too-many')
-    expect(await client.published('ferries', "SELECT note FROM public.piers WHERE pier_id = 'Northbank'", [], 'UTC', 1)).toEqual([['tab\there, back\\slash, new\nline, \\N']])
+    expect(await client.published('ferries', "SELECT note FROM public.piers WHERE pier_id = 'Northbank'", [], 'UTC', 1)).toEqual([
+      ['tab\there, back\\slash, new\nline, \\N'],
+    ])
   })
 
   test('reads published tables only, changes nothing, and has a time limit', async () => {

@@ -44,7 +44,9 @@ export async function ferryLobby(): Promise<FerryLobby> {
   await maintenance.query('SELECT pg_advisory_lock(4711)')
   for (const database of ['ferries', 'harbours', 'ferry_vault', 'ferry_ledger']) await maintenance.query(`DROP DATABASE IF EXISTS ${database} WITH (FORCE)`)
   for (const role of ['ana', 'bo', 'cy', 'porter', 'hedgerow_owner', 'hedgerow_reader']) {
-    await maintenance.query(`DO $$ BEGIN IF to_regrole('${role}') IS NOT NULL THEN EXECUTE 'DROP OWNED BY ${role}'; EXECUTE 'DROP ROLE ${role}'; END IF; END $$`)
+    await maintenance.query(
+      `DO $$ BEGIN IF to_regrole('${role}') IS NOT NULL THEN EXECUTE 'DROP OWNED BY ${role}'; EXECUTE 'DROP ROLE ${role}'; END IF; END $$`,
+    )
   }
   for (const database of ['ferry_vault', 'ferry_ledger']) await maintenance.query(`CREATE DATABASE ${database} TEMPLATE template0 ENCODING 'UTF8'`)
   const vault = await admin('ferry_vault')
@@ -125,7 +127,11 @@ export function ferryTables(): ReadonlyMap<string, DataTable> {
         onePerPerson: true,
         uniqueKeys: [['rider_id']],
         primaryKey: ['rider_id'],
-        columns: columns(column('rider_id', 'int4', { role: 'linking', notNull: true }), column('birth_year', 'int4', { clamp: ['1920', '2020'] }), column('mood', 'mood')),
+        columns: columns(
+          column('rider_id', 'int4', { role: 'linking', notNull: true }),
+          column('birth_year', 'int4', { clamp: ['1920', '2020'] }),
+          column('mood', 'mood'),
+        ),
       },
     ],
     [
@@ -205,7 +211,10 @@ export function ferryAnalyst(name: string, ...dataSets: readonly string[]): Anal
   return { name, login: verifierOf(passwordOf(name)), data: new Map(dataSets.map((each) => [each, cap])) }
 }
 
-export function ferryPolicies(tables = ferryTables(), analysts: readonly Analyst[] = [ferryAnalyst('ana', 'ferries'), ferryAnalyst('bo', 'ferries'), ferryAnalyst('cy', 'harbours')]): Policies {
+export function ferryPolicies(
+  tables = ferryTables(),
+  analysts: readonly Analyst[] = [ferryAnalyst('ana', 'ferries'), ferryAnalyst('bo', 'ferries'), ferryAnalyst('cy', 'harbours')],
+): Policies {
   const harbours = new Map([...tables].filter(([, table]) => table.kind === 'published'))
   return {
     dataSets: new Map([

@@ -26,7 +26,7 @@ const definitions = `
   ORDER BY 1, 2`
 
 describe('the shells', () => {
-  test('hold the visible columns with the vault\'s types, keys and NOT NULLs, and state the policy in comments', async () => {
+  test("hold the visible columns with the vault's types, keys and NOT NULLs, and state the policy in comments", async () => {
     const columns = await admin.query({
       text: `SELECT c.relname || '.' || a.attname || ' ' || format_type(a.atttypid, a.atttypmod) || CASE WHEN a.attnotnull THEN ' not null' ELSE '' END FROM pg_class c JOIN pg_attribute a ON a.attrelid = c.oid
         WHERE c.relnamespace = 'public'::regnamespace AND c.relkind = 'r' AND a.attnum > 0 AND c.relname <> 'piers' ORDER BY c.relname, a.attnum`,
@@ -44,7 +44,10 @@ describe('the shells', () => {
       'trips.fare_pence pence',
       'trips.boarded_at timestamp with time zone',
     ])
-    const keys = await admin.query({ text: "SELECT conname FROM pg_constraint WHERE connamespace = 'public'::regnamespace AND contype IN ('p', 'f') ORDER BY 1", rowMode: 'array' })
+    const keys = await admin.query({
+      text: "SELECT conname FROM pg_constraint WHERE connamespace = 'public'::regnamespace AND contype IN ('p', 'f') ORDER BY 1",
+      rowMode: 'array',
+    })
     expect(keys.rows.flat()).toEqual(['complaints_trip_id_fkey', 'piers_pkey', 'riders_pkey', 'trips_from_pier_fkey', 'trips_pkey', 'trips_rider_id_fkey'])
     const comments = await admin.query({
       text: "SELECT obj_description('trips'::regclass), col_description('trips'::regclass, 2), col_description('trips'::regclass, 3), col_description('trips'::regclass, 4)",
@@ -100,7 +103,10 @@ describe('the shells', () => {
       await ana.query("CREATE FUNCTION pg_temp.peek() RETURNS bigint LANGUAGE sql AS 'SELECT count(*) FROM public.riders'").catch(() => undefined)
       expect(await failureOf(ana, 'SELECT pg_temp.peek()')).toBe(rowSecurity === 'on' ? '42501' : '42883')
       for (const plan of ['force_generic_plan', 'force_custom_plan']) {
-        const prepared = await failureOf(ana, `DEALLOCATE ALL; SET plan_cache_mode = ${plan}; PREPARE p AS SELECT * FROM riders WHERE rider_id = $1; EXECUTE p(1)`)
+        const prepared = await failureOf(
+          ana,
+          `DEALLOCATE ALL; SET plan_cache_mode = ${plan}; PREPARE p AS SELECT * FROM riders WHERE rider_id = $1; EXECUTE p(1)`,
+        )
         expect(prepared).toBe('42501')
       }
     }
@@ -108,8 +114,19 @@ describe('the shells', () => {
 
   test('cannot be written, emptied, altered or analysed by an analyst', async () => {
     const ana = await lobby.analyst('ana')
-    for (const text of ['INSERT INTO riders (rider_id) VALUES (1)', 'UPDATE riders SET birth_year = 1', 'DELETE FROM riders', 'TRUNCATE riders', 'ALTER TABLE riders DISABLE ROW LEVEL SECURITY',
-      'ALTER POLICY people_stay_inside ON riders USING (true)', 'DROP TABLE riders', 'BEGIN; LOCK TABLE riders IN ACCESS EXCLUSIVE MODE', 'SELECT * FROM riders FOR UPDATE', 'CREATE INDEX ON riders (birth_year)', 'DELETE FROM piers']) {
+    for (const text of [
+      'INSERT INTO riders (rider_id) VALUES (1)',
+      'UPDATE riders SET birth_year = 1',
+      'DELETE FROM riders',
+      'TRUNCATE riders',
+      'ALTER TABLE riders DISABLE ROW LEVEL SECURITY',
+      'ALTER POLICY people_stay_inside ON riders USING (true)',
+      'DROP TABLE riders',
+      'BEGIN; LOCK TABLE riders IN ACCESS EXCLUSIVE MODE',
+      'SELECT * FROM riders FOR UPDATE',
+      'CREATE INDEX ON riders (birth_year)',
+      'DELETE FROM piers',
+    ]) {
       expect({ text, code: await failureOf(ana, text) }).toEqual({ text, code: '42501' })
       await ana.query('ROLLBACK')
     }
@@ -120,10 +137,13 @@ describe('published tables', () => {
   test('are copied exactly, with keys and indexes, and free to read', async () => {
     const ana = await lobby.analyst('ana')
     const vault = await lobby.admin('ferry_vault')
-    const digest = "SELECT count(*), md5(string_agg(p::text, '|' ORDER BY pier_id COLLATE \"C\")) FROM piers p"
+    const digest = 'SELECT count(*), md5(string_agg(p::text, \'|\' ORDER BY pier_id COLLATE "C")) FROM piers p'
     for (const session of [ana, vault]) await session.query("SET TimeZone = 'UTC'")
     expect((await ana.query(digest)).rows).toEqual((await vault.query(digest)).rows)
-    const indexes = await admin.query({ text: "SELECT indexrelid::regclass::text FROM pg_index WHERE indrelid = 'piers'::regclass ORDER BY 1", rowMode: 'array' })
+    const indexes = await admin.query({
+      text: "SELECT indexrelid::regclass::text FROM pg_index WHERE indrelid = 'piers'::regclass ORDER BY 1",
+      rowMode: 'array',
+    })
     expect(indexes.rows.flat()).toEqual(['piers_opened', 'piers_pkey'])
     expect((await admin.query("SELECT reltuples > 20000 AS analysed FROM pg_class WHERE oid = 'piers'::regclass")).rows).toEqual([{ analysed: true }])
   })
@@ -132,7 +152,14 @@ describe('published tables', () => {
 describe('an analyst', () => {
   test('enters the own data sets only, with the password only', async () => {
     await lobby.analyst('cy', { database: 'harbours' })
-    for (const [name, database] of [['ana', 'harbours'], ['cy', 'ferries'], ['ana', 'postgres'], ['ana', 'template1'], ['ana', 'ferry_ledger'], ['ana', 'ferry_vault']] as const) {
+    for (const [name, database] of [
+      ['ana', 'harbours'],
+      ['cy', 'ferries'],
+      ['ana', 'postgres'],
+      ['ana', 'template1'],
+      ['ana', 'ferry_ledger'],
+      ['ana', 'ferry_vault'],
+    ] as const) {
       await expect(lobby.analyst(name, { database })).rejects.toMatchObject({ code: '42501' })
     }
     await expect(lobby.analyst('ana', { password: 'wrong' })).rejects.toMatchObject({ code: '28P01' })
@@ -156,14 +183,27 @@ describe('an analyst', () => {
       'hedgerow.margin': '',
     }
     for (const [name, value] of Object.entries(wanted)) expect({ name, value: await show(name) }).toEqual({ name, value })
-    for (const text of ['SET temp_file_limit = -1', "SET log_min_messages = 'debug5'", "SET log_statement = 'all'"]) expect(await failureOf(ana, text)).toBe('42501')
+    for (const text of ['SET temp_file_limit = -1', "SET log_min_messages = 'debug5'", "SET log_statement = 'all'"])
+      expect(await failureOf(ana, text)).toBe('42501')
   })
 
   test('makes temporary objects and no others', async () => {
     const ana = await lobby.analyst('ana')
     await ana.query('CREATE TEMP TABLE mine (a int); CREATE TEMP VIEW seen AS SELECT * FROM mine; CREATE TEMP SEQUENCE s')
-    for (const text of ['CREATE TABLE public.mine (a int)', 'CREATE TABLE hedgerow.mine (a int)', 'CREATE SCHEMA mine', 'CREATE FUNCTION public.f() RETURNS int LANGUAGE sql AS $$SELECT 1$$', 'CREATE VIEW public.v AS SELECT 1',
-      'CREATE DATABASE mine', 'CREATE ROLE mine', 'CREATE EXTENSION pgcrypto', 'CREATE SERVER s FOREIGN DATA WRAPPER dblink_fdw', 'CREATE PUBLICATION p', 'CREATE TYPE public.t AS (a int)', 'GRANT ana TO bo']) {
+    for (const text of [
+      'CREATE TABLE public.mine (a int)',
+      'CREATE TABLE hedgerow.mine (a int)',
+      'CREATE SCHEMA mine',
+      'CREATE FUNCTION public.f() RETURNS int LANGUAGE sql AS $$SELECT 1$$',
+      'CREATE VIEW public.v AS SELECT 1',
+      'CREATE DATABASE mine',
+      'CREATE ROLE mine',
+      'CREATE EXTENSION pgcrypto',
+      'CREATE SERVER s FOREIGN DATA WRAPPER dblink_fdw',
+      'CREATE PUBLICATION p',
+      'CREATE TYPE public.t AS (a int)',
+      'GRANT ana TO bo',
+    ]) {
       expect({ text, code: await failureOf(ana, text) }).toEqual({ text, code: '42501' })
     }
   })
@@ -171,7 +211,13 @@ describe('an analyst', () => {
   test('is a member of no role, and takes nothing from others with DROP OWNED', async () => {
     const bo = await lobby.analyst('bo')
     expect((await admin.query("SELECT FROM pg_auth_members WHERE member = 'bo'::regrole")).rows).toEqual([])
-    for (const text of ['DROP OWNED BY hedgerow_owner', 'DROP OWNED BY ana', 'SET ROLE hedgerow_owner', 'SET ROLE hedgerow_reader', 'SET SESSION AUTHORIZATION ana']) {
+    for (const text of [
+      'DROP OWNED BY hedgerow_owner',
+      'DROP OWNED BY ana',
+      'SET ROLE hedgerow_owner',
+      'SET ROLE hedgerow_reader',
+      'SET SESSION AUTHORIZATION ana',
+    ]) {
       expect({ text, code: await failureOf(bo, text) }).toEqual({ text, code: '42501' })
     }
     await bo.query('DROP OWNED BY bo')
@@ -182,16 +228,40 @@ describe('an analyst', () => {
 
   test('reaches no large objects, files, advisory locks, log messages, snapshots, text-to-query functions or dblink', async () => {
     const ana = await lobby.analyst('ana')
-    for (const call of ["lo_create(0)", "lo_from_bytea(0, '\\x00')", 'lo_creat(-1)', "lo_get(1)", 'lo_open(1, 131072)', 'loread(0, 1)', "lowrite(0, '')", "lo_import('/etc/passwd')", "pg_read_file('PG_VERSION')", "pg_ls_dir('.')", "pg_stat_file('PG_VERSION')",
-      'pg_advisory_lock(1)', 'pg_advisory_xact_lock_shared(1, 2)', 'pg_try_advisory_lock(1)', 'pg_advisory_unlock_all()', "pg_logical_emit_message(false, 'a', 'b')", 'pg_export_snapshot()',
-      "query_to_xml('SELECT 1', true, false, '')", "table_to_xml('piers', true, false, '')", "schema_to_xml('public', true, false, '')", "database_to_xml(true, false, '')", "query_to_xmlschema('SELECT 1', true, false, '')",
-      "cursor_to_xml('c', 1, true, false, '')", "hedgerow_inside.dblink_get_connections()", "hedgerow_inside.ask('budget', '', '[]', '[]')", "dblink_connect('hedgerow_pull')"]) {
+    for (const call of [
+      'lo_create(0)',
+      "lo_from_bytea(0, '\\x00')",
+      'lo_creat(-1)',
+      'lo_get(1)',
+      'lo_open(1, 131072)',
+      'loread(0, 1)',
+      "lowrite(0, '')",
+      "lo_import('/etc/passwd')",
+      "pg_read_file('PG_VERSION')",
+      "pg_ls_dir('.')",
+      "pg_stat_file('PG_VERSION')",
+      'pg_advisory_lock(1)',
+      'pg_advisory_xact_lock_shared(1, 2)',
+      'pg_try_advisory_lock(1)',
+      'pg_advisory_unlock_all()',
+      "pg_logical_emit_message(false, 'a', 'b')",
+      'pg_export_snapshot()',
+      "query_to_xml('SELECT 1', true, false, '')",
+      "table_to_xml('piers', true, false, '')",
+      "schema_to_xml('public', true, false, '')",
+      "database_to_xml(true, false, '')",
+      "query_to_xmlschema('SELECT 1', true, false, '')",
+      "cursor_to_xml('c', 1, true, false, '')",
+      'hedgerow_inside.dblink_get_connections()',
+      "hedgerow_inside.ask('budget', '', '[]', '[]')",
+      "dblink_connect('hedgerow_pull')",
+    ]) {
       const code = await failureOf(ana, `SELECT ${call}`)
       expect({ call, code }).toEqual({ call, code: call.startsWith('dblink') ? '42883' : '42501' })
     }
   })
 
-  test('sees neither the pull port\'s password nor what others run', async () => {
+  test("sees neither the pull port's password nor what others run", async () => {
     const ana = await lobby.analyst('ana')
     const bo = await lobby.analyst('bo')
     const running = bo.query("SELECT pg_sleep(0.3), 'a secret of bo'")
@@ -209,9 +279,13 @@ describe('an analyst', () => {
     const before = (await admin.query({ text: definitions, rowMode: 'array' })).rows
     const ana = await lobby.analyst('ana')
     await ana.query("ALTER ROLE ana PASSWORD 'mine now'")
-    await ana.query("ALTER ROLE ana RESET ALL; ALTER ROLE ana SET row_security = on; ALTER ROLE ana IN DATABASE ferries SET statement_timeout = 0; ALTER ROLE ana SET work_mem = '1GB'")
+    await ana.query(
+      "ALTER ROLE ana RESET ALL; ALTER ROLE ana SET row_security = on; ALTER ROLE ana IN DATABASE ferries SET statement_timeout = 0; ALTER ROLE ana SET work_mem = '1GB'",
+    )
     await admin.query('CREATE ROLE deckhands; GRANT deckhands TO ana')
-    await admin.query('ALTER ROLE ana CREATEDB CREATEROLE CONNECTION LIMIT -1; GRANT CONNECT ON DATABASE ferry_ledger TO ana; GRANT CONNECT ON DATABASE postgres TO PUBLIC')
+    await admin.query(
+      'ALTER ROLE ana CREATEDB CREATEROLE CONNECTION LIMIT -1; GRANT CONNECT ON DATABASE ferry_ledger TO ana; GRANT CONNECT ON DATABASE postgres TO PUBLIC',
+    )
     await lobby.analyst('ana', { password: 'mine now' })
     await lobby.install()
     await admin.query('DROP ROLE deckhands')

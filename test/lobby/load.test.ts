@@ -49,9 +49,12 @@ describe('a policy load', () => {
     const vault = await lobby.admin('ferry_vault')
     const ana = await lobby.analyst('ana')
     await ana.query("CREATE TEMP TABLE mine AS SELECT 'calm'::mood AS m")
-    await vault.query("ALTER TYPE mood ADD VALUE 'glad' BEFORE 'calm'; ALTER TYPE mood ADD VALUE 'tired' AFTER 'calm'; INSERT INTO piers (pier_id) VALUES ('Newquay')")
+    await vault.query(
+      "ALTER TYPE mood ADD VALUE 'glad' BEFORE 'calm'; ALTER TYPE mood ADD VALUE 'tired' AFTER 'calm'; INSERT INTO piers (pier_id) VALUES ('Newquay')",
+    )
     await lobby.install()
-    const labels = "SELECT enum_range(NULL::mood)::text AS labels, (SELECT atttypid::regtype::text FROM pg_attribute WHERE attrelid = 'riders'::regclass AND attname = 'mood') AS used"
+    const labels =
+      "SELECT enum_range(NULL::mood)::text AS labels, (SELECT atttypid::regtype::text FROM pg_attribute WHERE attrelid = 'riders'::regclass AND attname = 'mood') AS used"
     expect((await admin.query(labels)).rows).toEqual([{ labels: '{glad,calm,tired,cross}', used: 'mood' }])
     expect((await ana.query("SELECT m::text FROM mine WHERE m < 'tired'")).rows).toEqual([{ m: 'calm' }])
     expect((await ana.query("SELECT count(*)::int AS n FROM piers WHERE pier_id = 'Newquay'")).rows).toEqual([{ n: 1 }])
@@ -80,7 +83,9 @@ describe('a policy load', () => {
   })
 
   test.skipIf(process.env['HEDGEROW_TEST_DATABASE_URL'])('is refused where the lobby lets an analyst in with any password', async () => {
-    const [before] = (await admin.query<{ path: string; text: string }>("SELECT current_setting('hba_file') AS path, pg_read_file(current_setting('hba_file')) AS text")).rows
+    const [before] = (
+      await admin.query<{ path: string; text: string }>("SELECT current_setting('hba_file') AS path, pg_read_file(current_setting('hba_file')) AS text")
+    ).rows
     const write = async (text: string): Promise<void> => {
       await admin.query("SELECT lo_from_bytea(4711, convert_to($1, 'UTF8'))", [text])
       await admin.query('SELECT lo_export(4711, $1)', [before?.path])
@@ -88,12 +93,26 @@ describe('a policy load', () => {
     }
     await write(`host all ana all trust\n${before?.text}`)
     try {
-      await expect.poll(() => lobby.analyst('ana', { password: 'anything' }).then(() => 'in', () => 'out')).toBe('in')
+      await expect
+        .poll(() =>
+          lobby.analyst('ana', { password: 'anything' }).then(
+            () => 'in',
+            () => 'out',
+          ),
+        )
+        .toBe('in')
       await expect(lobby.install()).rejects.toThrow(/the lobby let ana in with a wrong password; its pg_hba.conf must demand scram-sha-256/)
     } finally {
       await write(before?.text ?? '')
     }
-    await expect.poll(() => lobby.analyst('ana', { password: 'anything' }).then(() => 'in', () => 'out')).toBe('out')
+    await expect
+      .poll(() =>
+        lobby.analyst('ana', { password: 'anything' }).then(
+          () => 'in',
+          () => 'out',
+        ),
+      )
+      .toBe('out')
   })
 
   test('stops with a remedy where something is in the way', async () => {

@@ -47,14 +47,18 @@ describe('a pull', () => {
     expect(Date.parse(request?.statement ?? '')).not.toBeNaN()
   })
 
-  test('raises the reply\'s notice, and its errors with SQLSTATE, message and hint', async () => {
+  test("raises the reply's notice, and its errors with SQLSTATE, message and hint", async () => {
     const notices: (string | undefined)[] = []
     ana.on('notice', (notice) => notices.push(notice.message))
     lobby.pull.answerWith(async () => rows([], 'spent 100% of % nothing'))
     await ana.query("SELECT hedgerow.pull('x', '[]')")
     expect(notices).toEqual(['spent 100% of % nothing'])
     lobby.pull.answerWith(async () => ({ kind: 'error', sqlstate: '42803', message: 'no % aggregate', hint: 'SELECT count(*) FROM trips' }))
-    await expect(ana.query("SELECT hedgerow.pull('x', '[]')")).rejects.toMatchObject({ code: '42803', message: 'no % aggregate', hint: 'SELECT count(*) FROM trips' })
+    await expect(ana.query("SELECT hedgerow.pull('x', '[]')")).rejects.toMatchObject({
+      code: '42803',
+      message: 'no % aggregate',
+      hint: 'SELECT count(*) FROM trips',
+    })
     lobby.pull.answerWith(async () => ({ kind: 'error', sqlstate: '22023', message: 'bad', hint: '' }))
     await expect(ana.query("SELECT hedgerow.pull('x', '[]')")).rejects.toMatchObject({ code: '22023', hint: undefined })
   })
@@ -183,7 +187,9 @@ describe('released rows', () => {
     await ana.query("SET TimeZone = 'UTC'; SET IntervalStyle = 'postgres'")
     for (const [type, list] of values) {
       lobby.pull.answerWith(async () => rows(list.map((c1) => ({ c1 }))))
-      const texts = (await ana.query({ text: `SELECT c1::text FROM jsonb_to_recordset(hedgerow.pull('x', '[]')) AS r(c1 ${type})`, rowMode: 'array' })).rows.map((row: unknown[]) => row[0])
+      const texts = (
+        await ana.query({ text: `SELECT c1::text FROM jsonb_to_recordset(hedgerow.pull('x', '[]')) AS r(c1 ${type})`, rowMode: 'array' })
+      ).rows.map((row: unknown[]) => row[0])
       const expected = list.map((value) => (value === true || value === 't' ? 'true' : value === false ? 'false' : value))
       expect({ type, texts }).toEqual({ type, texts: expected })
     }
@@ -193,7 +199,9 @@ describe('released rows', () => {
     const many = Array.from({ length: 100_000 }, (_, at) => ({ c1: String(at), c2: `pier ${at}`, c3: '12.50' }))
     lobby.pull.answerWith(async () => rows(many))
     const start = performance.now()
-    const answer = await ana.query("SELECT count(*)::int AS n, sum(c1)::text AS total, sum(c3)::text AS fares FROM jsonb_to_recordset(hedgerow.pull('x', '[]')) AS r(c1 int8, c2 text, c3 numeric)")
+    const answer = await ana.query(
+      "SELECT count(*)::int AS n, sum(c1)::text AS total, sum(c3)::text AS fares FROM jsonb_to_recordset(hedgerow.pull('x', '[]')) AS r(c1 int8, c2 text, c3 numeric)",
+    )
     expect(answer.rows).toEqual([{ n: 100_000, total: '4999950000', fares: '1250000.00' }])
     const elapsed = performance.now() - start
     console.info(`100,000 rows through a pull: ${Math.round(elapsed)} ms`)
@@ -206,11 +214,28 @@ describe('what an analyst can look up', () => {
     lobby.pull.answerWith(async (request) => {
       switch (request.kind) {
         case 'budget':
-          return rows([{ c1: request.user, c2: 'always', c3: '4', c4: '0.000001', c5: null, c6: '0.1', c7: '0.01', c8: '0', c9: '40', c10: '0.3', c11: 'a note' }])
+          return rows([
+            { c1: request.user, c2: 'always', c3: '4', c4: '0.000001', c5: null, c6: '0.1', c7: '0.01', c8: '0', c9: '40', c10: '0.3', c11: 'a note' },
+          ])
         case 'charges':
           return rows([{ c1: '2026-12-01T10:00:00Z', c2: null, c3: '0.005', c4: '0', c5: 'gaussian', c6: 'public.trips', c7: 'psql', c8: '1' }])
         case 'last_answer':
-          return rows([{ c1: 'count', c2: 'laplace', c3: '200', c4: '600', c5: '0.95', c6: '12', c7: '20', c8: '0.1', c9: '0.005', c10: '0', c11: '2026-12-01T10:00:00Z', c12: '1' }])
+          return rows([
+            {
+              c1: 'count',
+              c2: 'laplace',
+              c3: '200',
+              c4: '600',
+              c5: '0.95',
+              c6: '12',
+              c7: '20',
+              c8: '0.1',
+              c9: '0.005',
+              c10: '0',
+              c11: '2026-12-01T10:00:00Z',
+              c12: '1',
+            },
+          ])
         case 'bounds':
           return rows([{ c1: 'public.trips', c2: 'fare_pence', c3: 'clamp 0 to 2500', c4: '12', c5: '20', c6: '0', c7: '2500', c8: '1', c9: null }])
         default:
@@ -220,9 +245,15 @@ describe('what an analyst can look up', () => {
     expect((await ana.query('SELECT account, epsilon_cap, epsilon_spent, default_statements_left, note FROM hedgerow.budget')).rows).toEqual([
       { account: 'ana', epsilon_cap: '4', epsilon_spent: null, default_statements_left: '40', note: 'a note' },
     ])
-    expect((await ana.query('SELECT at, rho, mechanism, id FROM hedgerow.charges')).rows).toEqual([{ at: new Date('2026-12-01T10:00:00Z'), rho: '0.005', mechanism: 'gaussian', id: '1' }])
-    expect((await ana.query('SELECT output, margin, rows_per_group FROM hedgerow.last_answer')).rows).toEqual([{ output: 'count', margin: '600', rows_per_group: '20' }])
-    expect((await ana.query('SELECT table_name, groups, rows, clamp_high FROM hedgerow.bounds')).rows).toEqual([{ table_name: 'public.trips', groups: '12', rows: '20', clamp_high: '2500' }])
+    expect((await ana.query('SELECT at, rho, mechanism, id FROM hedgerow.charges')).rows).toEqual([
+      { at: new Date('2026-12-01T10:00:00Z'), rho: '0.005', mechanism: 'gaussian', id: '1' },
+    ])
+    expect((await ana.query('SELECT output, margin, rows_per_group FROM hedgerow.last_answer')).rows).toEqual([
+      { output: 'count', margin: '600', rows_per_group: '20' },
+    ])
+    expect((await ana.query('SELECT table_name, groups, rows, clamp_high FROM hedgerow.bounds')).rows).toEqual([
+      { table_name: 'public.trips', groups: '12', rows: '20', clamp_high: '2500' },
+    ])
     expect((await ana.query("SELECT * FROM hedgerow.explain('SELECT count(*) FROM trips')")).rows).toEqual([{ explain: 'one line' }, { explain: 'another' }])
     expect(lobby.pull.requests.map((request) => [request.kind, request.user, request.text])).toEqual([
       ['budget', 'ana', ''],
@@ -242,11 +273,15 @@ describe('what an analyst can look up', () => {
     ana.on('notice', (notice) => seen.push(notice.message))
     await ana.query("SELECT * FROM hedgerow.budget WHERE pg_temp.peek(account) AND account <> 'bo'")
     expect(seen).toEqual(['peeked ana'])
-    const barrier = await (await lobby.admin('ferries')).query(
+    const barrier = await (
+      await lobby.admin('ferries')
+    ).query(
       "SELECT c.relname FROM pg_class c WHERE c.relnamespace = 'hedgerow'::regnamespace AND c.relkind = 'v' AND NOT c.reloptions @> '{security_barrier=true}'",
     )
     expect(barrier.rows).toEqual([])
-    const pinned = await (await lobby.admin('ferries')).query(
+    const pinned = await (
+      await lobby.admin('ferries')
+    ).query(
       "SELECT proname FROM pg_proc WHERE pronamespace = 'hedgerow'::regnamespace AND (NOT prosecdef OR proowner <> 'hedgerow_owner'::regrole OR NOT proconfig @> '{\"search_path=pg_catalog, pg_temp\"}')",
     )
     expect(pinned.rows).toEqual([])
@@ -254,6 +289,6 @@ describe('what an analyst can look up', () => {
 
   test('knows four kinds and no other', async () => {
     expect(await failureOf(ana, "SELECT hedgerow.read('release')")).toBe('22023')
-    expect(await failureOf(ana, "SELECT hedgerow.read(NULL)")).toBe('22023')
+    expect(await failureOf(ana, 'SELECT hedgerow.read(NULL)')).toBe('22023')
   })
 })

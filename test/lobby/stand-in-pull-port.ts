@@ -61,7 +61,15 @@ export async function standInPullPort(password: string): Promise<StandInPullPort
       const body = frame.subarray(5)
       if (kind === 'p') {
         if (body.toString('utf8', 0, body.length - 1) === password) {
-          socket.write(Buffer.concat([message('R', int32(0)), parameter('client_encoding', 'UTF8'), parameter('server_encoding', 'UTF8'), parameter('standard_conforming_strings', 'on'), message('Z', Buffer.from('I'))]))
+          socket.write(
+            Buffer.concat([
+              message('R', int32(0)),
+              parameter('client_encoding', 'UTF8'),
+              parameter('server_encoding', 'UTF8'),
+              parameter('standard_conforming_strings', 'on'),
+              message('Z', Buffer.from('I')),
+            ]),
+          )
         } else {
           socket.end(message('E', Buffer.from('SFATAL\0C28P01\0Mpassword authentication failed for the pull port\0\0')))
         }
@@ -107,7 +115,16 @@ export async function standInPullPort(password: string): Promise<StandInPullPort
 
 function rowOf(text: string): Buffer {
   const value = Buffer.from(text)
-  const description = Buffer.concat([Buffer.from([0, 1]), Buffer.from('reply\0'), int32(0), Buffer.from([0, 0]), int32(25), Buffer.from([255, 255]), int32(-1), Buffer.from([0, 0])])
+  const description = Buffer.concat([
+    Buffer.from([0, 1]),
+    Buffer.from('reply\0'),
+    int32(0),
+    Buffer.from([0, 0]),
+    int32(25),
+    Buffer.from([255, 255]),
+    int32(-1),
+    Buffer.from([0, 0]),
+  ])
   return Buffer.concat([
     message('T', description),
     message('D', Buffer.concat([Buffer.from([0, 1]), int32(value.length), value])),

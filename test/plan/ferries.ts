@@ -15,11 +15,25 @@ function type(printed: string): CatalogType {
 type Declared = Partial<Pick<DataColumn, 'clamp' | 'step' | 'values' | 'valuesFrom' | 'notNull' | 'role' | 'deterministic'>>
 
 function column(name: string, printed: string, declared: Declared = {}): readonly [string, DataColumn] {
-  return [name, { name, type: type(printed), notNull: false, deterministic: true, role: 'listed', clamp: null, step: null, values: null, valuesFrom: null, ...declared }]
+  return [
+    name,
+    { name, type: type(printed), notNull: false, deterministic: true, role: 'listed', clamp: null, step: null, values: null, valuesFrom: null, ...declared },
+  ]
 }
 
 function privateTable(name: string, more: Partial<PrivateTable>, columns: readonly (readonly [string, DataColumn])[]): DataTable {
-  return { kind: 'private', schema: 'public', name, owner: { kind: 'column', column: 'rider_id' }, bounds: { groups: 1, rows: 1 }, onePerPerson: false, uniqueKeys: [], primaryKey: null, ...more, columns: new Map(columns) }
+  return {
+    kind: 'private',
+    schema: 'public',
+    name,
+    owner: { kind: 'column', column: 'rider_id' },
+    bounds: { groups: 1, rows: 1 },
+    onePerPerson: false,
+    uniqueKeys: [],
+    primaryKey: null,
+    ...more,
+    columns: new Map(columns),
+  }
 }
 
 function publishedTable(name: string, more: Partial<PublishedTable>, columns: readonly (readonly [string, DataColumn])[]): DataTable {
@@ -49,12 +63,21 @@ const tables: readonly DataTable[] = [
     column('note', 'text'),
     column('rested', 'interval'),
   ]),
-  privateTable('complaints', { bounds: { groups: 3, rows: 2 }, owner: { kind: 'through', steps: [{ column: 'trip_id', table: 'public.trips', referenced: 'trip_id' }], person: 'rider_id' }, uniqueKeys: [['complaint_id']], primaryKey: ['complaint_id'] }, [
-    column('complaint_id', 'integer', { notNull: true }),
-    column('trip_id', 'integer', linking),
-    column('topic', 'text', { notNull: true }),
+  privateTable(
+    'complaints',
+    {
+      bounds: { groups: 3, rows: 2 },
+      owner: { kind: 'through', steps: [{ column: 'trip_id', table: 'public.trips', referenced: 'trip_id' }], person: 'rider_id' },
+      uniqueKeys: [['complaint_id']],
+      primaryKey: ['complaint_id'],
+    },
+    [column('complaint_id', 'integer', { notNull: true }), column('trip_id', 'integer', linking), column('topic', 'text', { notNull: true })],
+  ),
+  publishedTable('piers', { uniqueKeys: [['pier_id']], primaryKey: ['pier_id'] }, [
+    column('pier_id', 'integer', { notNull: true }),
+    column('name', 'text', { notNull: true }),
+    column('zone', 'integer', { notNull: true }),
   ]),
-  publishedTable('piers', { uniqueKeys: [['pier_id']], primaryKey: ['pier_id'] }, [column('pier_id', 'integer', { notNull: true }), column('name', 'text', { notNull: true }), column('zone', 'integer', { notNull: true })]),
   publishedTable('tides', {}, [column('pier_id', 'integer'), column('height', 'numeric(4,1)')]),
 ]
 
@@ -70,7 +93,7 @@ export const ferries: DataSet = {
   defaults: { epsilon: '0.1', delta: '1e-8' },
   replyAfterMs: 300,
   personKey: '1/public.riders.rider_id',
-  tables: new Map(tables.map(table => [`${table.schema}.${table.name}`, table])),
+  tables: new Map(tables.map((table) => [`${table.schema}.${table.name}`, table])),
   hasUndeclaredKeys: true,
 }
 
@@ -86,8 +109,19 @@ export async function planned(parser: Parser, sql: string, limits: Limits = noLi
   const [placed] = outcome.statements
   if (placed === undefined || placed.refusal !== null) throw new Error(`not read: ${placed?.refusal?.code ?? 'nothing'}`)
   const cut = cutStatement(placed.statement, ferries)
-  const plans = cut.blocks.map(block =>
-    planBlock(block.query, { dataSet: ferries, parameters: block.parameters.map(() => ({ type: parameterType, value: undefined })), now: '2026-12-01T00:00:00+00:00', timeZone: 'UTC', commonTables: new Map(), scans: [] }, limits),
+  const plans = cut.blocks.map((block) =>
+    planBlock(
+      block.query,
+      {
+        dataSet: ferries,
+        parameters: block.parameters.map(() => ({ type: parameterType, value: undefined })),
+        now: '2026-12-01T00:00:00+00:00',
+        timeZone: 'UTC',
+        commonTables: new Map(),
+        scans: [],
+      },
+      limits,
+    ),
   )
   return { cut, plans }
 }

@@ -106,7 +106,7 @@ const answered: readonly string[] = [
 ]
 
 describe('a statement whose bound is proved', () => {
-  test.each(answered)('is planned: %s', async sql => {
+  test.each(answered)('is planned: %s', async (sql) => {
     expect(await codeOf(sql)).toBe('planned')
   })
 })

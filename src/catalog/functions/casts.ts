@@ -15,7 +15,8 @@ export function castTo(arg: Scalar, type: ScalarType, at: number): Scalar {
   if (arg.type.family === 'unknown') return settle({ ...arg, at }, type)
   if (sameType(arg.type, type) && arg.carrier === 'own') return arg
   if (isNumber(arg.type) && isNumber(type)) return castNumber(type.family === 'integer' || arg.type.family !== 'integer' ? clamped(arg) : arg, type, at)
-  if (type.family === 'text' && arg.carrier === 'own' && arg.type.family !== 'opaque') return apply('cast', [arg], type, { at, words: ['pg_catalog', type.name] })
+  if (type.family === 'text' && arg.carrier === 'own' && arg.type.family !== 'opaque')
+    return apply('cast', [arg], type, { at, words: ['pg_catalog', type.name] })
   if (arg.type.family === 'bool' && type.name === 'int4') return truthNumber(arg, at)
   if (arg.type.name === 'int4' && arg.carrier === 'own' && type.family === 'bool') return apply('truth', [arg], scalarType('bool'), { at })
   if (instants.has(arg.type.family) && instants.has(type.family)) return castTime(arg, type.name, at)

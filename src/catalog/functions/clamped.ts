@@ -7,12 +7,20 @@ export function clamped(scalar: Scalar): Scalar {
   if (node.kind !== 'column' || node.clamped !== null || node.offers === null) return scalar
   const number = scalar.type.family === 'integer' || scalar.type.family === 'numeric' || scalar.type.family === 'float'
   const carrier = scalar.type.family === 'float' || onGrid(scalar, node.offers) ? 'numeric' : 'own'
-  return { ...scalar, node: { ...node, clamped: node.offers }, range: number ? rangeOfClamp(scalar, node.offers) : null, carrier, nullable: scalar.nullable || scalar.type.family === 'float' || scalar.type.family === 'numeric' }
+  return {
+    ...scalar,
+    node: { ...node, clamped: node.offers },
+    range: number ? rangeOfClamp(scalar, node.offers) : null,
+    carrier,
+    nullable: scalar.nullable || scalar.type.family === 'float' || scalar.type.family === 'numeric',
+  }
 }
 
 /** Whether the printed clamp also rounds to the declared step: needed where the type itself proves no grid. */
 export function onGrid(scalar: Scalar, clamp: Clamp): boolean {
-  return clamp.step !== null && (scalar.type.family === 'float' || scalar.type.family === 'numeric' || clamp.step !== '1') && (scalar.range?.step ?? null) === null
+  return (
+    clamp.step !== null && (scalar.type.family === 'float' || scalar.type.family === 'numeric' || clamp.step !== '1') && (scalar.range?.step ?? null) === null
+  )
 }
 
 function rangeOfClamp(scalar: Scalar, clamp: Clamp): Range {

@@ -24,7 +24,7 @@ export function settle(scalar: Scalar, type: ScalarType): Scalar {
 
 /** The type that several values share, as in CASE, coalesce, IN: the widest of numbers, else the first known one. A bare string is read as it. */
 export function commonType(scalars: readonly Scalar[]): ScalarType {
-  const known = scalars.map(scalar => scalar.type).filter(type => type.family !== 'unknown')
+  const known = scalars.map((scalar) => scalar.type).filter((type) => type.family !== 'unknown')
   if (known.length > 0 && known.every(isNumber)) return known.reduce(promote)
   return known[0] ?? scalarType('text')
 }
@@ -41,12 +41,13 @@ export function compare(form: '=' | '<>' | '<' | '<=' | '>' | '>=' | 'distinct' 
 export function inList(arg: Scalar, list: readonly Scalar[], negated: boolean, at: number): Scalar {
   const type = commonType([arg, ...list])
   const settled = settle(arg, type)
-  const entries = list.map(entry => settle(entry, type))
+  const entries = list.map((entry) => settle(entry, type))
   // PostgreSQL brings a list to one type: a date among instants can overflow there
-  const odd = entries.find(entry => instants.has(entry.type.family) && entry.type.family !== settled.type.family)
+  const odd = entries.find((entry) => instants.has(entry.type.family) && entry.type.family !== settled.type.family)
   if (odd !== undefined) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${odd.type.name}` }, odd.at)
-  for (const entry of entries) if (!match(settled.type, entry.type)) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${entry.type.name}` }, entry.at)
-  const pairs = entries.map(entry => comparable(settled, entry))
-  const subject = pairs.map(([left]) => left).find(left => left !== settled) ?? settled
+  for (const entry of entries)
+    if (!match(settled.type, entry.type)) refuse('expr.unsupported', { what: `IN between ${settled.type.name} and ${entry.type.name}` }, entry.at)
+  const pairs = entries.map((entry) => comparable(settled, entry))
+  const subject = pairs.map(([left]) => left).find((left) => left !== settled) ?? settled
   return apply(negated ? 'not-in' : 'in', [subject, ...pairs.map(([, entry]) => entry)], bool, { at })
 }

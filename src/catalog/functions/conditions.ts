@@ -36,25 +36,28 @@ export function isBoolean(arg: Scalar, test: string, negated: boolean, at: numbe
 }
 
 /** Values that become one: brought to one type, numbers clamped and, where their types differ, computed in numeric. */
-function unify(values: readonly Scalar[], what: string): { readonly values: readonly Scalar[]; readonly type: ScalarType; readonly range: Range | null; readonly carrier: Scalar['carrier'] } {
+function unify(
+  values: readonly Scalar[],
+  what: string,
+): { readonly values: readonly Scalar[]; readonly type: ScalarType; readonly range: Range | null; readonly carrier: Scalar['carrier'] } {
   const first = commonType(values)
-  const known = values.map(value => clamped(settle(value, first)))
-  const numbers = known.every(value => isNumber(value.type))
-  const type = numbers ? known.map(value => value.type).reduce(promote) : first
+  const known = values.map((value) => clamped(settle(value, first)))
+  const numbers = known.every((value) => isNumber(value.type))
+  const type = numbers ? known.map((value) => value.type).reduce(promote) : first
   if (!numbers) {
-    const odd = known.find(value => !sameType(value.type, type) && !(value.type.family === 'text' && type.family === 'text'))
+    const odd = known.find((value) => !sameType(value.type, type) && !(value.type.family === 'text' && type.family === 'text'))
     if (odd !== undefined) refuse('expr.unsupported', { what: `${what} over ${type.name} and ${odd.type.name}` }, odd.at)
     const wide = type.family === 'text' ? scalarType('text') : type
-    return { values: known, type: known.every(value => sameType(value.type, type)) ? type : wide, range: null, carrier: 'own' }
+    return { values: known, type: known.every((value) => sameType(value.type, type)) ? type : wide, range: null, carrier: 'own' }
   }
-  const ranges = known.map(value => (value.node.kind === 'constant' && value.node.text === null ? null : value.range))
-  const present = known.filter(value => !(value.node.kind === 'constant' && value.node.text === null))
-  const proved = present.every(value => value.range !== null)
+  const ranges = known.map((value) => (value.node.kind === 'constant' && value.node.text === null ? null : value.range))
+  const present = known.filter((value) => !(value.node.kind === 'constant' && value.node.text === null))
+  const proved = present.every((value) => value.range !== null)
   const range = proved ? ranges.reduce<Range | null>(union, null) : null
-  const own = known.every(value => value.carrier === 'own' && sameType(value.type, type))
+  const own = known.every((value) => value.carrier === 'own' && sameType(value.type, type))
   if (own) return { values: known, type, range, carrier: 'own' }
   if (!proved) {
-    if (known.every(value => value.carrier === 'own' && value.type.family !== 'numeric')) return { values: known, type, range: null, carrier: 'own' }
+    if (known.every((value) => value.carrier === 'own' && value.type.family !== 'numeric')) return { values: known, type, range: null, carrier: 'own' }
     refuse('expr.unbounded', { expression: 'this value' }, known[0]?.at ?? -1)
   }
   return { values: known.map(asNumeric), type, range, carrier: 'numeric' }
@@ -68,25 +71,31 @@ function union(a: Range | null, b: Range | null): Range | null {
 
 /** CASE, its simple form rewritten to comparisons by the caller; a missing ELSE is NULL. */
 export function choose(whens: readonly { readonly when: Scalar; readonly then: Scalar }[], otherwise: Scalar | null, at: number): Scalar {
-  const results = [...whens.map(each => each.then), ...(otherwise === null ? [] : [otherwise])]
+  const results = [...whens.map((each) => each.then), ...(otherwise === null ? [] : [otherwise])]
   const unified = unify(results, 'CASE')
   const args = whens.flatMap((each, i) => {
     const then = unified.values[i]
     return then === undefined ? [] : [truth(each.when), then]
   })
   const last = unified.values[whens.length]
-  const nullable = otherwise === null || results.some(result => result.nullable)
+  const nullable = otherwise === null || results.some((result) => result.nullable)
   return { ...apply('case', last === undefined ? args : [...args, last], unified.type, { at, range: unified.range, nullable }), carrier: unified.carrier }
 }
 
 export function coalesce(args: readonly Scalar[], at: number): Scalar {
   const unified = unify(args, 'coalesce')
-  return { ...apply('coalesce', unified.values, unified.type, { at, range: unified.range, nullable: unified.values.every(arg => arg.nullable) }), carrier: unified.carrier }
+  return {
+    ...apply('coalesce', unified.values, unified.type, { at, range: unified.range, nullable: unified.values.every((arg) => arg.nullable) }),
+    carrier: unified.carrier,
+  }
 }
 
 export function extreme(word: 'greatest' | 'least', args: readonly Scalar[], at: number): Scalar {
   const unified = unify(args, word)
-  return { ...apply(word, unified.values, unified.type, { at, range: unified.range, nullable: unified.values.every(arg => arg.nullable) }), carrier: unified.carrier }
+  return {
+    ...apply(word, unified.values, unified.type, { at, range: unified.range, nullable: unified.values.every((arg) => arg.nullable) }),
+    carrier: unified.carrier,
+  }
 }
 
 export function nullIf(left: Scalar, right: Scalar, at: number): Scalar {

@@ -72,10 +72,11 @@ function isInteger(scalar: Scalar): boolean {
 
 /** An operation on numbers: its operands brought to a type in which the proved result fits. */
 function compute(form: FormName, args: readonly Scalar[], type: ScalarType, range: Range, at: number, words: readonly string[] = []): Scalar {
-  for (const end of [range.low, range.high, range.step ?? Fraction.zero]) if (end.n >> boundBits > 1n || end.n >> boundBits < -1n || end.d >> boundBits > 0n) refuse('expr.unbounded', { expression: 'this value' }, at)
+  for (const end of [range.low, range.high, range.step ?? Fraction.zero])
+    if (end.n >> boundBits > 1n || end.n >> boundBits < -1n || end.d >> boundBits > 0n) refuse('expr.unbounded', { expression: 'this value' }, at)
   const size = args.reduce((most, arg) => most.max(largest(rangeOf(arg))), largest(range))
   if (type.family === 'integer' && args.every(isInteger)) {
-    const narrow = type.name !== 'int2' && size.isLess(two31) && args.every(arg => arg.carrier === 'own' && arg.type.name !== 'int2')
+    const narrow = type.name !== 'int2' && size.isLess(two31) && args.every((arg) => arg.carrier === 'own' && arg.type.name !== 'int2')
     if (narrow) return apply(form, args, type, { range, at, words })
     if (size.isLess(two62)) return { ...apply(form, args.map(asInt8), type, { range, at, words }), carrier: 'int8' }
     if (form === 'divide' || form === 'modulo') refuse('expr.unbounded', { expression: 'this division' }, at)
@@ -112,7 +113,10 @@ export function arithmetic(sign: '+' | '-' | '*' | '/' | '%', left: Scalar, righ
     case '%': {
       if (type.family !== 'integer') return refuse('expr.unsupported', { what: `% over ${type.name}` }, at)
       const size = largest(b)
-      return { ...compute('modulo', [left, right], type, { low: a.low.isLess(Fraction.zero) ? size.neg() : Fraction.zero, high: size, step: Fraction.one }, at), nullable: true }
+      return {
+        ...compute('modulo', [left, right], type, { low: a.low.isLess(Fraction.zero) ? size.neg() : Fraction.zero, high: size, step: Fraction.one }, at),
+        nullable: true,
+      }
     }
   }
 }
@@ -147,7 +151,9 @@ export function rounded(form: 'floor' | 'ceil' | 'round' | 'trunc' | 'sign', arg
     return Fraction.make(up ? units.ceil() : units.floor()).mul(unit)
   }
   const bound: Range =
-    form === 'sign' ? { low: Fraction.one.neg(), high: Fraction.one, step: Fraction.one } : { low: toGrid(range.low, false), high: toGrid(range.high, true), step: unit }
+    form === 'sign'
+      ? { low: Fraction.one.neg(), high: Fraction.one, step: Fraction.one }
+      : { low: toGrid(range.low, false), high: toGrid(range.high, true), step: unit }
   return { ...apply(form, [asNumeric(arg)], type, { range: bound, at, words }), carrier: 'numeric' }
 }
 
@@ -162,7 +168,8 @@ export function castNumber(arg: Scalar, to: ScalarType, at: number): Scalar {
     // PostgreSQL rounds a numeric to the nearest, halves away from zero
     const range = rangeOf(arg)
     const bounds = { low: Fraction.make(range.low.sub(half).ceil()), high: Fraction.make(range.high.add(half).floor()), step: Fraction.one }
-    const whole = arg.type.family === 'integer' ? arg : { ...apply('round', [asNumeric(arg)], arg.type, { range: bounds, at, words: ['0'] }), carrier: 'numeric' as const }
+    const whole =
+      arg.type.family === 'integer' ? arg : { ...apply('round', [asNumeric(arg)], arg.type, { range: bounds, at, words: ['0'] }), carrier: 'numeric' as const }
     return apply('cast', [whole], to, { words: ['pg_catalog', to.name], range: arg.type.family === 'integer' ? range : bounds, at })
   }
   if (to.family === 'numeric') {
@@ -170,7 +177,12 @@ export function castNumber(arg: Scalar, to: ScalarType, at: number): Scalar {
     return standing(arg, to, 'own', at)
   }
   // to a float: exact numbers with a proved range, kept in numeric so that sums stay exact
-  if (arg.type.family === 'float' && arg.carrier === 'own' && arg.range === null) return apply('cast', [arg], to.name === 'float8' ? to : refuse('expr.unsupported', { what: 'a cast to real' }, at), { words: ['pg_catalog', 'float8'], range: null, at })
+  if (arg.type.family === 'float' && arg.carrier === 'own' && arg.range === null)
+    return apply('cast', [arg], to.name === 'float8' ? to : refuse('expr.unsupported', { what: 'a cast to real' }, at), {
+      words: ['pg_catalog', 'float8'],
+      range: null,
+      at,
+    })
   if (arg.type.family === 'integer' && arg.range === null) return apply('cast', [arg], to, { words: ['pg_catalog', to.name], range: null, at })
   rangeOf(arg)
   return standing(arg, to, 'numeric', at)
@@ -188,7 +200,10 @@ function besideFloat(side: Scalar): Scalar {
   if (printsAs(side) !== 'numeric') return side
   // NaN and the infinities have no range and fit; any other value of the statement's own is held to the same edges, since the vault casts it
   if (side.node.kind === 'constant' && (side.node.text === null || !/\d/.test(side.node.text))) return side
-  const gridded = rangeOf(side).step === null ? { ...apply('round', [side], side.type, { range: { ...rangeOf(side), step: floatGrid }, at: side.at, words: ['290'] }), carrier: side.carrier } : side
+  const gridded =
+    rangeOf(side).step === null
+      ? { ...apply('round', [side], side.type, { range: { ...rangeOf(side), step: floatGrid }, at: side.at, words: ['290'] }), carrier: side.carrier }
+      : side
   fitsFloat(gridded, 'float8')
   return gridded
 }
@@ -202,5 +217,6 @@ function printsAs(scalar: Scalar): 'integer' | 'numeric' | 'float' {
 export function fitsFloat(scalar: Scalar, to: 'float4' | 'float8'): void {
   const edge = Fraction.make(10n ** (to === 'float4' ? 30n : 290n))
   const { step } = rangeOf(scalar)
-  if (!largest(rangeOf(scalar)).isAtMost(edge) || step === null || (step.isPositive() && step.isLess(Fraction.one.div(edge)))) refuse('expr.unbounded', { expression: describe(scalar) }, scalar.at)
+  if (!largest(rangeOf(scalar)).isAtMost(edge) || step === null || (step.isPositive() && step.isLess(Fraction.one.div(edge))))
+    refuse('expr.unbounded', { expression: describe(scalar) }, scalar.at)
 }

@@ -16,7 +16,8 @@ function asText(scalar: Scalar, what: string, at: number): Scalar {
 /** a LIKE pattern: the pattern is a constant or a parameter, so that no row can hand in an odd one. */
 export function like(word: 'like' | 'ilike', arg: Scalar, pattern: Scalar, negated: boolean, at: number): Scalar {
   const settled = settle(pattern, textType)
-  if (settled.node.kind === 'parameter') return apply('like', [asText(arg, 'LIKE', at), settled], scalarType('bool'), { at, words: [word, negated ? 'not' : ''] })
+  if (settled.node.kind === 'parameter')
+    return apply('like', [asText(arg, 'LIKE', at), settled], scalarType('bool'), { at, words: [word, negated ? 'not' : ''] })
   if (settled.node.kind !== 'constant') refuse('expr.unsupported', { what: 'LIKE with a pattern that is not a constant' }, pattern.at)
   const text = settled.node.text ?? ''
   const escapes = /\\*$/.exec(text)?.[0].length ?? 0
@@ -38,7 +39,8 @@ export function textFunction(name: string, args: readonly Scalar[], at: number):
   const form = plain[name]
   if (form !== undefined && args.length === 1) return apply(form, [asText(first, name, at)], textType, { at })
   if (lengths.has(name) && args.length === 1) return apply('length', [asText(first, name, at)], scalarType('int4'), { at, range: null })
-  if ((name === 'left' || name === 'right') && args.length === 2) return apply(name, [asText(first, name, at)], textType, { at, words: [constantInteger(args[1], -1000, name, at)] })
+  if ((name === 'left' || name === 'right') && args.length === 2)
+    return apply(name, [asText(first, name, at)], textType, { at, words: [constantInteger(args[1], -1000, name, at)] })
   if ((name === 'substr' || name === 'substring') && (args.length === 2 || args.length === 3)) {
     const words = [constantInteger(args[1], -1000, name, at), ...(args.length === 3 ? [constantInteger(args[2], 0, name, at)] : [])]
     return apply('substring', [asText(first, name, at)], textType, { at, words })
@@ -49,6 +51,7 @@ export function textFunction(name: string, args: readonly Scalar[], at: number):
 function constantInteger(arg: Scalar | undefined, least: number, name: string, at: number): string {
   const text = arg?.node.kind === 'constant' && arg.type.family === 'integer' ? arg.node.text : null
   const value = text === null ? null : BigInt(text)
-  if (value === null || value < BigInt(least) || value > 1000n) return refuse('expr.unsupported', { what: `${name} with a position that is not a constant from ${String(least)} to 1000` }, arg?.at ?? at)
+  if (value === null || value < BigInt(least) || value > 1000n)
+    return refuse('expr.unsupported', { what: `${name} with a position that is not a constant from ${String(least)} to 1000` }, arg?.at ?? at)
   return value.toString()
 }
