@@ -46,7 +46,7 @@ describe('hedgerow check', () => {
     expect(code).toBe(0)
     expect(lines).toEqual([
       expect.stringMatching(/^warning: .*policies\/analysts\.yaml:\d+:\d+: everyone\.ferries\.epsilon: 12 bounds very little/),
-      'ferries: the privacy of each rider (public.riders.rider_id); a statement spends epsilon 0.1 and is answered after 300 ms',
+      'ferries: the privacy of each rider (public.riders.rider_id); a statement spends epsilon 0.1 and is answered after 1000 ms',
       '  public.riders      private, owned by rider_id, 1 group of 1 row (one row each, proved), 3 columns',
       '  public.trips       private, owned by rider_id, 12 groups of 20 rows, 5 columns',
       '  public.complaints  private, owned through trip_id → public.trips.trip_id → rider_id, 3 groups of 3 rows, 1 column',

@@ -52,12 +52,9 @@ describe('parameters of each common type', () => {
     expect(through).toBe(straight)
   })
 
-  test('an array is refused with a hint in which no place was left open', async () => {
-    const refused = (await client
-      .query('SELECT count(*) FROM trips WHERE pier = ANY ($1)', [['p1', 'p3']])
-      .catch((problem: unknown) => problem)) as pg.DatabaseError
-    expect(refused).toMatchObject({ code: '42501', message: 'a parameter of type text[] is not answered over private rows [expr.unsupported]' })
-    expect(refused.hint).not.toMatch(/[{}]/)
+  test('an array is a list of values, as one parameter or as several', async () => {
+    const [whole, straightWhole] = await both('SELECT count(*) FROM trips WHERE pier = ANY ($1)', [['p1', 'p3']])
+    expect(whole).toBe(straightWhole)
     const written = 'SELECT count(*) FROM trips WHERE pier = ANY (ARRAY[$1, $2])'
     const [through, straight] = await both(written, ['p1', 'p3'])
     expect(through).toBe(straight)
