@@ -55,7 +55,8 @@ function factorSql(plan: ReleasePlan, factor: ListFactor, fixed: FixedValues): Q
     }
     case 'instants': {
       const args = [printOwn(factor.low, fixed), printOwn(factor.high, fixed), cast(text(units[factor.unit] ?? `1 ${factor.unit}`), 'interval')]
-      const value = call('date_trunc', [text(factor.unit), column('v', 'v')])
+      const start = call('date_trunc', [text(factor.unit), column('v', 'v')])
+      const value = factor.type.name === factor.low.type.name ? start : cast(start, factor.type.name, factor.type.schema)
       return withNull(distinct([target(value, name)], series(args), []), factor.nullable, [name])
     }
     case 'numbers': {

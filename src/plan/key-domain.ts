@@ -17,8 +17,18 @@ export function domainOf(scalar: Scalar, key: number, scans: readonly Scan[]): L
   }
   if (node.kind === 'apply' && (node.form === 'date-trunc' || node.form === 'extract') && isClamped(scalar) && isBetweenEnds(scalar))
     return steps(scalar, node, key)
-  return null
+  return castOfInstants(scalar, key, scans)
 }
+
+/** date_trunc('month', a)::date and the like: the list of what is cast, each value cast. */
+function castOfInstants(scalar: Scalar, key: number, scans: readonly Scan[]): ListFactor | null {
+  const arg = scalar.node.kind === 'apply' && scalar.node.form === 'cast' ? scalar.node.args[0] : undefined
+  if (arg?.node.kind !== 'apply' || arg.node.form !== 'date-trunc' || !instants.has(scalar.type.family)) return null
+  const list = domainOf(arg, key, scans)
+  return list?.kind === 'instants' ? { ...list, type: scalar.type } : null
+}
+
+const instants: ReadonlySet<string> = new Set(['date', 'timestamp', 'timestamptz'])
 
 type Apply = Extract<Scalar['node'], { kind: 'apply' }>
 

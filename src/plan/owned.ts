@@ -209,6 +209,9 @@ function samePerson(a: ColumnRef, b: ColumnRef, source: Extract<Source, { kind: 
           ]
           if (builder.classes.same(x, y)) matched.merge(x, y)
         }
+  // a matched row has a row of every scan that its condition equates, so what holds on rows of that scan holds here
+  const present = new Set(source.on.flatMap((test) => (equated(test) ?? []).map((ref) => ref.scan)))
+  for (const [from, to] of builder.directed) if (present.has(from.scan)) matched.merge(from, to)
   sameRows(source, matched)
   return matched.same(a, b)
 }
