@@ -25,10 +25,11 @@ ORDER BY r.district`,
   },
   {
     point: 'a ratio of two noisy counts is arithmetic on released numbers, and costs nothing more than the counts',
-    sql: `SELECT date_trunc('month', t.boarded_at)::date AS month,
+    sql: `SELECT date_trunc('quarter', t.boarded_at)::date AS quarter,
        round(count(*) FILTER (WHERE r.concession)::numeric / nullif(count(*), 0), 3) AS concession_share
 FROM trips t JOIN riders r USING (rider_id)
 GROUP BY 1
+HAVING count(*) > 5000
 ORDER BY 1`,
     outcome: 'private answer',
   },
