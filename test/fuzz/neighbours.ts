@@ -66,8 +66,11 @@ export class Harbour {
   readonly #there: pg.Client
   readonly #parser: Parser
   #schemas = 0
+  /** PostgreSQL has infinite intervals from 17 on. */
+  readonly #endless: string
 
-  private constructor(here: pg.Client, there: pg.Client) {
+  private constructor(here: pg.Client, there: pg.Client, version: number) {
+    this.#endless = version < 170_000 ? '178000000 years' : 'infinity'
     this.#here = here
     this.#there = there
     this.#parser = createParser()
@@ -81,7 +84,8 @@ export class Harbour {
     await clients[1].query(otherWays)
     await clients[0].query(`CREATE SCHEMA fuzz_kinds; CREATE TYPE fuzz_kinds.sky AS ENUM ('fog', 'calm', 'gale');
        CREATE COLLATION fuzz_kinds.caseless (provider = icu, locale = 'und-u-ks-level2', deterministic = false)`)
-    return new Harbour(...clients)
+    const { rows } = await clients[0].query<{ version: string }>(`SELECT current_setting('server_version_num') AS version`)
+    return new Harbour(...clients, Number(rows[0]?.version))
   }
 
   async close(): Promise<void> {
@@ -99,7 +103,7 @@ export class Harbour {
       if (given.length > 0)
         await this.#here.query(
           `INSERT INTO ${schema}.${table.name} (${names.join(', ')}) SELECT * FROM unnest(${types.map((type, i) => `$${(i + 1).toString()}::${type}`).join(', ')})`,
-          names.map((_, i) => given.map((row) => row[i] ?? null)),
+          table.columns.map((column, i) => given.map((row) => (column.kind === 'interval' && row[i] === 'infinity' ? this.#endless : (row[i] ?? null)))),
         )
     }
     const neighbours = []

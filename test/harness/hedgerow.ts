@@ -9,6 +9,7 @@ import { ensureDatabase, withDatabase } from '../../src/serve/databases.ts'
 import { type Hedgerow, startHedgerow } from '../../src/serve/hedgerow.ts'
 import { systemClock, systemRandom } from '../../src/serve/system.ts'
 import { testBackend } from './backend.ts'
+import { clearLobby } from './clear-lobby.ts'
 
 export interface TestHedgerowOptions {
   /** SQL that fills the vault's database, or what fills it by its superuser's URL. */
@@ -65,6 +66,7 @@ export async function testHedgerow(options: TestHedgerowOptions): Promise<TestHe
     return client
   }
   const maintenance = await connect({ connectionString: backend.url })
+  await clearLobby(maintenance)
   for (const name of ['people_vault', 'hedgerow_ledger', dataSet]) await maintenance.query(`DROP DATABASE IF EXISTS ${pg.escapeIdentifier(name)} WITH (FORCE)`)
   const vaultUrl = await ensureDatabase(backend.url, 'people_vault')
   const vault = await connect({ connectionString: vaultUrl })
@@ -102,8 +104,9 @@ export async function testHedgerow(options: TestHedgerowOptions): Promise<TestHe
     connect: (analyst, config = {}) =>
       connect({ connectionString: url(analyst), types: { getTypeParser: () => (value: string) => value } as unknown as pg.CustomTypesConfig, ...config }),
     stop: async () => {
-      await Promise.all(open.map((client) => client.end().catch(() => undefined)))
       await hedgerow.close()
+      await clearLobby(maintenance)
+      await Promise.all(open.map((client) => client.end().catch(() => undefined)))
       await backend.stop()
       await rm(directory, { recursive: true, force: true })
     },

@@ -3,6 +3,7 @@ import pg from 'pg'
 import { installLobby, type LobbyOrder, type LobbyReport } from '../../src/lobby/install.ts'
 import type { Analyst, Cap, DataColumn, DataSet, DataTable, Policies } from '../../src/policy/data-set.ts'
 import { testBackend } from '../harness/backend.ts'
+import { clearLobby } from '../harness/clear-lobby.ts'
 import { standInPullPort, type StandInPullPort } from './stand-in-pull-port.ts'
 
 const cap: Cap = { epsilon: '4', delta: '1e-6', renews: 'never' }
@@ -42,6 +43,7 @@ export async function ferryLobby(): Promise<FerryLobby> {
   const maintenance = await admin('postgres')
   // On a server of one's own that outlives the run: one file at a time, and nothing of the last one left.
   await maintenance.query('SELECT pg_advisory_lock(4711)')
+  await clearLobby(maintenance)
   for (const database of ['ferries', 'harbours', 'ferry_vault', 'ferry_ledger']) await maintenance.query(`DROP DATABASE IF EXISTS ${database} WITH (FORCE)`)
   for (const role of ['ana', 'bo', 'cy', 'porter', 'hedgerow_owner', 'hedgerow_reader']) {
     await maintenance.query(
@@ -70,6 +72,7 @@ export async function ferryLobby(): Promise<FerryLobby> {
       return connect({ host: hostname, port: Number(port), user: name, password, database, options })
     },
     stop: async () => {
+      await clearLobby(maintenance)
       await Promise.all(open.map((client) => client.end().catch(() => undefined)))
       await pull.close()
       await backend.stop()
