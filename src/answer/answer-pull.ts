@@ -5,7 +5,8 @@ import { accountsOf } from './accounts.ts'
 import { explainStatement } from './explain.ts'
 import { give } from './give.ts'
 import { exampleFor } from '../plan/example.ts'
-import { dataSetFor, dataSetOf } from './in-force.ts'
+import type { DataSet } from '../policy/data-set.ts'
+import { dataSetFor, dataSetOf, type InForce } from './in-force.ts'
 import { noticeOf, outputsOf } from './notice.ts'
 import { planText } from './plan-text.ts'
 import type { AnswerPull, PullReply, PullRequest } from './ports.ts'
@@ -35,7 +36,7 @@ async function dispatch(request: PullRequest, signal: AbortSignal, parts: PullPa
   const dataSet = dataSetFor(inForce, request.database, request.user)
   switch (request.kind) {
     case 'release':
-      return answerBlock(request, signal, parts)
+      return answerBlock(request, signal, inForce, dataSet, parts)
     case 'explain':
       return explainStatement(request, inForce, parts)
     case 'budget':
@@ -55,9 +56,7 @@ function rows(list: Rows['rows']): Rows {
   return { kind: 'rows', rows: list, notice: '' }
 }
 
-async function answerBlock(request: PullRequest, signal: AbortSignal, parts: PullParts): Promise<PullReply> {
-  const inForce = parts.inForce()
-  const dataSet = dataSetFor(inForce, request.database, request.user)
+async function answerBlock(request: PullRequest, signal: AbortSignal, inForce: InForce, dataSet: DataSet, parts: PullParts): Promise<PullReply> {
   const accounts = accountsOf(inForce.policies, dataSet, request.user)
   const settings = readSessionSettings(request.settings, dataSet)
   const block = await planText(request.text, request, dataSet, settings.limits, parts.parser, parts.describer)

@@ -1,6 +1,7 @@
 import { check } from '../base/check.ts'
 import { refuse } from '../base/refusal.ts'
-import { printedParameter, scalarTypeOf, type ScalarType } from '../catalog/scalar-type.ts'
+import { printedParameter, type ScalarType } from '../catalog/scalar-type.ts'
+import { enumType } from '../plan/lower-type.ts'
 import type { BlockTypes } from '../plan/rewrite.ts'
 import type { DataSet } from '../policy/data-set.ts'
 import type { Parser } from '../sql/parser.ts'
@@ -8,7 +9,7 @@ import type { TypeRef } from '../sql/tree.ts'
 import type { Described, Lobby } from './ports.ts'
 
 export type BlockDescription =
-  | { readonly kind: 'described'; readonly types: BlockTypes; readonly parameters: readonly ScalarType[]; readonly outputs: readonly string[] }
+  | { readonly kind: 'described'; readonly types: BlockTypes; readonly parameters: readonly ScalarType[] }
   | Extract<Described, { kind: 'complaint' }>
 
 /** Describes texts in the lobby, once each: what PostgreSQL itself says of their parameters and columns. */
@@ -41,7 +42,7 @@ export function createDescriber(lobby: Lobby, parser: Parser): Describer {
     const parameters = described.parameters.map((printed) => parameterType(printed, dataSet))
     const columns = await Promise.all(described.columns.map(async (column) => ({ name: column.name, type: await typeRef(column.type) })))
     const types = { parameters: await Promise.all(described.parameters.map(typeRef)), columns }
-    return { kind: 'described', types, parameters, outputs: described.columns.map((column) => column.type) }
+    return { kind: 'described', types, parameters }
   }
 
   return {
@@ -63,13 +64,6 @@ export function createDescriber(lobby: Lobby, parser: Parser): Describer {
 }
 
 function parameterType(printed: string, dataSet: DataSet): ScalarType {
-  const known = printedParameter(printed)
-  if (known !== null) return known
-  for (const table of dataSet.tables.values())
-    for (const column of table.columns.values())
-      if (column.type.kind === 'enum' && (column.type.printed === printed || column.type.name === printed)) {
-        const found = scalarTypeOf(column.type)
-        if (found !== null) return found
-      }
-  return refuse('expr.unsupported', { what: `a parameter of type ${printed}` })
+  const known = printedParameter(printed) ?? enumType(dataSet, (type) => type.printed === printed || type.name === printed)
+  return known ?? refuse('expr.unsupported', { what: `a parameter of type ${printed}` })
 }

@@ -2,7 +2,7 @@ import { completed, Refusal, refuse } from '../base/refusal.ts'
 import { type CutBlock, cutStatement } from '../plan/cut.ts'
 import { noLimits } from '../plan/limits.ts'
 import { planBlock } from '../plan/block.ts'
-import { blockText, type BlockTypes, explainText, refusedText, rewritten } from '../plan/rewrite.ts'
+import { type BlockTypes, explainText, openText, refusedText, rewritten } from '../plan/rewrite.ts'
 import { exampleFor, exampleOf } from '../plan/example.ts'
 import type { DataSet } from '../policy/data-set.ts'
 import { printStatement } from '../sql/print.ts'
@@ -119,7 +119,7 @@ async function rewrite(placed: ReadStatement, text: string, request: GateRequest
   const types: BlockTypes[] = []
   for (const block of cut.blocks) {
     const oids = block.parameters.map((number) => request.parameterTypes[number - 1] ?? 0)
-    const description = await parts.describer.block(dataSet, blockText(block, { parameters: [], columns: [] }), oids)
+    const description = await parts.describer.block(dataSet, openText(block), oids)
     if (description.kind === 'complaint') {
       // other commands are analysed when they run: PostgreSQL says then what is wrong
       if (!analysed.has(statement.kind) || (await parts.describer.complaint(dataSet, text, request.parameterTypes))) return null

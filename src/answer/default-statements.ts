@@ -1,5 +1,5 @@
 import { Fraction } from '../base/fraction.ts'
-import { timesLeft } from '../budget/left.ts'
+import { spentOf, timesLeft } from '../budget/left.ts'
 import type { Balance } from '../budget/ledger.ts'
 import { statementBudget } from '../budget/statement-budget.ts'
 import { pureRho } from '../noise/laplace-law.ts'
@@ -7,7 +7,7 @@ import type { DataSet } from '../policy/data-set.ts'
 
 /** How many statements at the data set's default epsilon still fit, under whichever law lasts longer. */
 export function defaultStatementsLeft(balance: Balance, dataSet: DataSet): bigint {
-  const spent = { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }
+  const spent = spentOf(balance)
   const budget = statementBudget(Fraction.parse(dataSet.defaults.epsilon), balance.cap)
   const pure = { epsilon: budget.epsilon, rho: pureRho(budget.epsilon), delta: Fraction.zero }
   const onPure = balance.epsilonSpent === null ? 0n : timesLeft(balance.cap, spent, pure)

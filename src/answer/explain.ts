@@ -1,9 +1,9 @@
 import { cutStatement } from '../plan/cut.ts'
-import { blockText } from '../plan/rewrite.ts'
+import { blockText, openText } from '../plan/rewrite.ts'
 import { refuse } from '../base/refusal.ts'
 import { BoundedQuery } from '../bound/bounded-query.ts'
 import { groupsToKeep, reachOf } from '../bound/reach.ts'
-import { timesLeft } from '../budget/left.ts'
+import { spentOf, timesLeft } from '../budget/left.ts'
 import { printExpr } from '../sql/print.ts'
 import type { Statement } from '../sql/tree.ts'
 import { accountsOf } from './accounts.ts'
@@ -41,7 +41,7 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
   const [balance] = balances
   const explained: Explained[] = []
   for (const each of cut.blocks) {
-    const description = await parts.describer.block(dataSet, printed(each), [])
+    const description = await parts.describer.block(dataSet, openText(each), [])
     if (description.kind === 'complaint') return { kind: 'error', sqlstate: description.sqlstate, message: description.message, hint: '' }
     const text = blockText(each, description.types)
     const block = await planText(
@@ -71,10 +71,6 @@ export async function explainStatement(request: PullRequest, inForce: InForce, p
   const lines = explained.flatMap((each, i) => linesOf(each, i, explained.length, settings, balance, verbose))
   const all = lines.length === 0 ? ['Nothing private is asked: the statement is free'] : lines
   return { kind: 'rows', rows: jsonOrText(placed.statement, all), notice: '' }
-}
-
-function printed(each: Parameters<typeof blockText>[0]): string {
-  return blockText(each, { parameters: [], columns: [] })
 }
 
 function wants(statement: Extract<Statement, { kind: 'explain' }>, name: string): boolean {
@@ -120,7 +116,7 @@ function linesOf(each: Explained, i: number, count: number, settings: SessionSet
       ? []
       : [
           `  Left before it: ${leftText(balance)}`,
-          `  Like it, in all: ${!price.charge.rho.isPositive() ? 'without end' : timesLeft(balance.cap, { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }, price.charge).toString()}`,
+          `  Like it, in all: ${!price.charge.rho.isPositive() ? 'without end' : timesLeft(balance.cap, spentOf(balance), price.charge).toString()}`,
         ]
   const charged = price.mechanisms.length === 0 ? ['  Charge: none'] : [why, `  Charge: ${chargeText(price.charge)}`, ...left]
   return [head, `  Groups: ${groupsText(each)}`, ...capsText(each), ...outputs, ...charged, ...(verbose ? [`  Vault: ${each.sql}`] : [])]

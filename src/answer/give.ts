@@ -6,6 +6,7 @@ import type { Clock, Log, RandomBytes } from '../base/ports.ts'
 import { refuse } from '../base/refusal.ts'
 import { BoundedQuery } from '../bound/bounded-query.ts'
 import { groupsToKeep } from '../bound/reach.ts'
+import { addCharge } from '../budget/accept.ts'
 import { debitFrom } from '../budget/debit.ts'
 import type { Balance, Charge, Ledger } from '../budget/ledger.ts'
 import { BitSource } from '../noise/bits.ts'
@@ -153,7 +154,7 @@ async function debited(accounts: Accounts, charge: Charge, reserve: Charge | nul
   const outcome = await parts.ledger.debit([accounts.analyst, accounts.everyone], charge, reserve, note)
   if (outcome.kind === 'debited') return outcome
   const balance = outcome.balances.find((each) => each.account === outcome.account)
-  const asked = reserve === null ? charge : sum(charge, reserve)
+  const asked = reserve === null ? charge : addCharge(charge, reserve)
   return refuse('budget.spent', {
     account: accountCalled(outcome.account),
     asked: asked.epsilon === null ? `rho ${figure(asked.rho)}` : `epsilon ${figure(asked.epsilon)}`,
@@ -177,10 +178,6 @@ function down(value: Fraction): string {
 function times(charge: Charge, count: number): Charge {
   const by = Fraction.make(BigInt(count))
   return { epsilon: charge.epsilon === null ? null : charge.epsilon.mul(by), rho: charge.rho.mul(by), delta: charge.delta.mul(by) }
-}
-
-function sum(a: Charge, b: Charge): Charge {
-  return { epsilon: a.epsilon === null || b.epsilon === null ? null : a.epsilon.add(b.epsilon), rho: a.rho.add(b.rho), delta: a.delta.add(b.delta) }
 }
 
 /** The plan's own print, without the salts' values or the statement's: it says whether two releases asked the same thing. */

@@ -1,7 +1,7 @@
 import { Fraction } from '../base/fraction.ts'
 import type { Balance, Charge } from '../budget/ledger.ts'
 import { printExpr } from '../sql/print.ts'
-import { timesLeft } from '../budget/left.ts'
+import { spentOf, timesLeft } from '../budget/left.ts'
 import { rowsOf, marginText, scaleText, figure } from './describe-release.ts'
 import { type Given, leftText } from './give.ts'
 import type { LastOutput } from './last-answers.ts'
@@ -36,7 +36,7 @@ export function noticeOf(block: PlannedBlock, given: Given, settings: SessionSet
 
 function more(balance: Balance, charge: Charge): string {
   if (!charge.rho.isPositive()) return ''
-  const spent = { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }
+  const spent = spentOf(balance)
   const times = timesLeft(balance.cap, spent, charge)
   return ` (${times.toString()} more like it)`
 }

@@ -1,5 +1,5 @@
 import type { Fraction } from '../base/fraction.ts'
-import { epsilonSpent } from '../budget/left.ts'
+import { epsilonSpent, spentOf } from '../budget/left.ts'
 import type { Balance, Ledger } from '../budget/ledger.ts'
 import type { DataSet, Policies, PrivateTable } from '../policy/data-set.ts'
 import { accountsOf } from './accounts.ts'
@@ -28,7 +28,7 @@ export async function budgetRows(request: PullRequest, dataSet: DataSet, policie
 }
 
 function budgetRow(balance: Balance, dataSet: DataSet, name: string): Row {
-  const spent = { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }
+  const spent = spentOf(balance)
   const { cap } = balance
   return row([
     name,

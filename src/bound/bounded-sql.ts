@@ -1,14 +1,26 @@
-import { call, cast, column, extreme, integer, isNull, logic, numeric, operator, when, text } from '../catalog/build.ts'
+import {
+  call,
+  cast,
+  column,
+  extreme,
+  integer,
+  isNull,
+  logic,
+  numeric,
+  operator,
+  positions,
+  selectQuery,
+  subquery,
+  target,
+  text,
+  when,
+} from '../catalog/build.ts'
 import { paddedScans } from '../plan/relation.ts'
 import type { ReleasePlan, Total, Units } from '../plan/release-plan.ts'
-import type { Expr, FromItem, GroupItem, Query, Target } from '../sql/tree.ts'
+import type { Expr, FromItem, Query, Target } from '../sql/tree.ts'
 import { pickOrder } from './pick-order.ts'
 import { type FixedValues, printKey, printScalar, scanName } from './print-scalar.ts'
-import { allOf, plainFrame, printSource, readColumns, selectQuery, subquery, target } from './print-source.ts'
-
-function positions(count: number): readonly GroupItem[] {
-  return Array.from({ length: count }, (_, i) => ({ kind: 'expression', value: integer(BigInt(i + 1)) }))
-}
+import { allOf, plainFrame, printSource, readColumns } from './print-source.ts'
 
 const keyName = (i: number): string => `k${i.toString()}`
 const countName = (i: number): string => `n${i.toString()}`

@@ -1,11 +1,11 @@
 import { unreachable } from '../base/check.ts'
-import { call, cast, column, integer, isNull, nothing, text } from '../catalog/build.ts'
+import { bodyQuery, call, cast, column, integer, isNull, nothing, selectQuery, subquery, target, text } from '../catalog/build.ts'
 import type { Scalar } from '../catalog/scalar.ts'
 import type { ListFactor, ReleasePlan } from '../plan/release-plan.ts'
 import type { Source } from '../plan/relation.ts'
 import type { Expr, FromItem, Query, Target } from '../sql/tree.ts'
 import { type FixedValues, printKey, printOwn, printScalar } from './print-scalar.ts'
-import { allOf, joined, printSource, selectQuery, subquery, target } from './print-source.ts'
+import { allOf, joined, printSource } from './print-source.ts'
 
 const units: Readonly<Record<string, string>> = {
   quarter: '3 months',
@@ -44,7 +44,7 @@ function factorSql(plan: ReleasePlan, factor: ListFactor, fixed: FixedValues): Q
     case 'texts': {
       const value = (entry: string | null): Expr => printKey(literal(factor.type, entry), fixed)
       const rows = factor.texts.map((entry) => [cast(value(entry), factor.type.family === 'unknown' ? 'text' : factor.type.name, factor.type.schema)])
-      const values: Query = { kind: 'query', with: null, body: { kind: 'values', rows }, order: [], limit: null, offset: null, withTies: false }
+      const values: Query = bodyQuery({ kind: 'values', rows })
       return distinct([target(column('v', name), name)], subquery(values, 'v', [name]), [])
     }
     case 'column': {
@@ -109,15 +109,7 @@ function withNull(query: Query, nullable: boolean, names: readonly string[]): Qu
   if (!nullable) return query
   // in VALUES a bare NULL would be text
   const nulls = selectQuery({ targets: names.map((name) => target(nothing(), name)), from: [] })
-  return {
-    kind: 'query',
-    with: null,
-    body: { kind: 'set-operation', word: 'union', all: false, left: query, right: nulls },
-    order: [],
-    limit: null,
-    offset: null,
-    withTies: false,
-  }
+  return bodyQuery({ kind: 'set-operation', word: 'union', all: false, left: query, right: nulls })
 }
 
 /** How many rows a published side has that is not joined on a unique key; the lobby counts before anything is debited. */

@@ -1,24 +1,11 @@
-import { cast, call, column, constant, integer, logic, operator } from '../catalog/build.ts'
+import { bodyQuery, call, cast, column, constant, integer, logic, operator, selectQuery, subquery, target } from '../catalog/build.ts'
 import { parts, scansOf, type Scalar } from '../catalog/scalar.ts'
 import { listedRows } from '../plan/fan-out.ts'
 import type { ReleasePlan } from '../plan/release-plan.ts'
 import type { Scan, Source } from '../plan/relation.ts'
 import type { DataColumn } from '../policy/data-set.ts'
-import type { Expr, FromItem, Query, Select, Target } from '../sql/tree.ts'
+import type { Expr, FromItem } from '../sql/tree.ts'
 import { type FixedValues, printOwn, printScalar, scanName } from './print-scalar.ts'
-
-export function target(value: Expr, label: string): Target {
-  return { value, label, at: -1 }
-}
-
-export function selectQuery(select: Partial<Select> & Pick<Select, 'targets' | 'from'>): Query {
-  const body: Select = { kind: 'select', distinct: null, where: null, group: [], groupDistinct: false, having: null, windows: [], ...select }
-  return { kind: 'query', with: null, body, order: [], limit: null, offset: null, withTies: false }
-}
-
-export function subquery(query: Query, alias: string, columns: readonly string[] = []): FromItem {
-  return { kind: 'subquery', query, lateral: false, alias: { name: alias, columns }, at: -1 }
-}
 
 export function allOf(tests: readonly Expr[]): Expr | null {
   return tests.length === 0 ? null : logic('and', tests)
@@ -189,5 +176,5 @@ function printListed(table: Extract<Scan['table'], { kind: 'listed' }>, alias: s
   }
   const types = [...table.columns.values()].map((each) => each.type)
   const rows = table.source.rows.map((row) => row.map((value, i) => cast(printOwn(value, context.fixed), types[i]?.name ?? 'text', types[i]?.schema)))
-  return subquery({ kind: 'query', with: null, body: { kind: 'values', rows }, order: [], limit: null, offset: null, withTies: false }, alias, columns)
+  return subquery(bodyQuery({ kind: 'values', rows }), alias, columns)
 }

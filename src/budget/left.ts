@@ -3,7 +3,12 @@ import type { Fraction } from '../base/fraction.ts'
 import type { Spent } from './accept.ts'
 import { capAmount, spentAmount, type Meter } from './amount.ts'
 import { epsilonOf } from './convert.ts'
-import type { AccountCap, Charge } from './ledger.ts'
+import type { AccountCap, Balance, Charge } from './ledger.ts'
+
+/** What a balance has borne in its period, as the acceptance rule reads it. */
+export function spentOf(balance: Balance): Spent {
+  return { epsilon: balance.epsilonSpent, rho: balance.rhoSpent, delta: balance.deltaSpent }
+}
 
 /**
  * How many more times the account can bear the charge, by the acceptance rule in the ledger's units: as often as the pot allows, on the track that lasts

@@ -1,4 +1,4 @@
-import type { Call, Constant, Expr, TypeRef } from '../sql/tree.ts'
+import type { Alias, Call, ColumnDefinition, Constant, Expr, FromItem, GroupItem, Query, Select, Target, TypeRef } from '../sql/tree.ts'
 
 /** Small makers of trees that Hedgerow prints itself; positions are -1. */
 
@@ -76,4 +76,39 @@ export function call(name: string, args: readonly Expr[], more: Partial<Pick<Cal
     syntax: 'plain',
     at: -1,
   }
+}
+
+/** A call of one of the lobby's own functions, in its schema `hedgerow`. */
+export function hedgerowCall(name: string, args: readonly Expr[]): Call {
+  return { ...call(name, args), name: ['hedgerow', name] }
+}
+
+/** A value of a SELECT list with its label. */
+export function target(value: Expr, label: string): Target {
+  return { value, label, at: -1 }
+}
+
+/** A query of that body and nothing around it. */
+export function bodyQuery(body: Query['body']): Query {
+  return { kind: 'query', with: null, body, order: [], limit: null, offset: null, withTies: false }
+}
+
+/** A SELECT of what is given; the other clauses are left out. */
+export function selectQuery(select: Partial<Select> & Pick<Select, 'targets' | 'from'>): Query {
+  return bodyQuery({ kind: 'select', distinct: null, where: null, group: [], groupDistinct: false, having: null, windows: [], ...select })
+}
+
+/** GROUP BY 1, 2, … up to `count`. */
+export function positions(count: number): readonly GroupItem[] {
+  return Array.from({ length: count }, (_, i) => ({ kind: 'expression', value: integer(BigInt(i + 1)) }))
+}
+
+/** A query in FROM, under an alias. */
+export function subquery(query: Query, alias: string, columns: readonly string[] = []): FromItem {
+  return { kind: 'subquery', query, lateral: false, alias: { name: alias, columns }, at: -1 }
+}
+
+/** A function in FROM. */
+export function functionItem(made: Expr, alias: Alias | null, definitions: readonly ColumnDefinition[] = []): FromItem {
+  return { kind: 'function', functions: [{ call: made, definitions: [] }], rowsFrom: false, lateral: false, ordinality: false, alias, definitions, at: -1 }
 }

@@ -54,8 +54,13 @@ export function scalarType(name: string): ScalarType {
 export function scalarTypeOf(type: CatalogType): ScalarType | null {
   if (type.kind === 'enum') return { schema: type.schema, name: type.name, family: 'enum' }
   if (type.kind !== 'base' || type.schema !== 'pg_catalog') return null
-  const family = families[type.name]
-  return family === undefined || family === 'unknown' ? null : { schema: 'pg_catalog', name: type.name, family }
+  return namedType(type.name)
+}
+
+/** The scalar type of that name in pg_catalog, or null where an expression has none of that name. */
+export function namedType(name: string): ScalarType | null {
+  const family = Object.hasOwn(families, name) ? families[name] : undefined
+  return family === undefined || family === 'unknown' ? null : { schema: 'pg_catalog', name, family }
 }
 
 /** A type whose values are counted or tested for NULL, and nothing else: json, arrays, domains and the like. */

@@ -1,3 +1,4 @@
+import { functionItem, hedgerowCall, positions, selectQuery } from '../catalog/build.ts'
 import { refuse } from '../base/refusal.ts'
 import { sameExpr } from '../sql/equal.ts'
 import { labelOf } from '../sql/label.ts'
@@ -52,36 +53,7 @@ export function cutSelect(query: Query, select: Select, names: Names, blocks: Cu
     select.distinct === null ? null : select.distinct.map((e) => sorted({ by: e, direction: 'default', using: [], nulls: 'default' }, select, cutting).by)
   const order = query.order.map((item) => sorted(item, select, cutting))
   blocks[slot] = blockOf(select, cutting, names)
-  const from: Select['from'] = [
-    {
-      kind: 'function',
-      functions: [
-        {
-          call: {
-            kind: 'call',
-            name: ['hedgerow', placeholderName(block)],
-            args: [],
-            star: false,
-            distinct: false,
-            variadic: false,
-            order: [],
-            within: false,
-            filter: null,
-            over: null,
-            syntax: 'plain',
-            at: -1,
-          },
-          definitions: [],
-        },
-      ],
-      rowsFrom: false,
-      lateral: false,
-      ordinality: false,
-      alias: { name: releasedName(block), columns: [] },
-      definitions: [],
-      at: -1,
-    },
-  ]
+  const from = [functionItem(hedgerowCall(placeholderName(block), []), { name: releasedName(block), columns: [] })]
   const body: Select = { kind: 'select', distinct, targets, from, where: having, group: [], groupDistinct: false, having: null, windows }
   const edge = (e: Expr | null): Expr | null => (e === null ? null : rest(e, cutting))
   return { ...query, body, order, limit: edge(query.limit), offset: edge(query.offset) }
@@ -201,22 +173,7 @@ function blockOf(select: Select, cutting: Cutting, names: Names): CutBlock {
     at: -1,
   }))
   if (targets.length === 0) refuse('block.shape', { what: 'a SELECT without a key or an aggregate' })
-  const group = cutting.keys.map((_, i) => ({
-    kind: 'expression' as const,
-    value: { kind: 'constant' as const, constant: { kind: 'integer' as const, value: String(i + 1) }, at: -1 },
-  }))
-  const body: Select = {
-    kind: 'select',
-    distinct: null,
-    targets,
-    from: select.from,
-    where: select.where,
-    group,
-    groupDistinct: false,
-    having: null,
-    windows: [],
-  }
-  const bare: Query = { kind: 'query', with: null, body, order: [], limit: null, offset: null, withTies: false }
+  const bare = selectQuery({ targets, from: select.from, where: select.where, group: positions(cutting.keys.length) })
   const query: Query = { ...bare, with: commonFor(bare, names) }
   const { numbered, parameters } = renumber(query)
   return { query: numbered, parameters, names: shadowable(query, names) }

@@ -1,3 +1,4 @@
+import { positions } from '../catalog/build.ts'
 import { unreachable } from '../base/check.ts'
 import { refuse, withFacts } from '../base/refusal.ts'
 import type { DataSet } from '../policy/data-set.ts'
@@ -127,7 +128,7 @@ function distinctAsGroups(select: Select, query: Query): Select {
   return {
     ...select,
     distinct: null,
-    group: select.targets.map((_, i) => ({ kind: 'expression', value: { kind: 'constant', constant: { kind: 'integer', value: String(i + 1) }, at: -1 } })),
+    group: positions(select.targets.length),
   }
 }
 

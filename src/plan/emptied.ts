@@ -1,3 +1,4 @@
+import { constant, nothing, selectQuery, target } from '../catalog/build.ts'
 import { mapExpr } from '../sql/walk.ts'
 import { mapQuery } from '../sql/walk-query.ts'
 import type { DataColumn } from '../policy/data-set.ts'
@@ -57,29 +58,8 @@ export function emptied(query: Query, names: Names): Query {
 }
 
 function noRows(columns: readonly DataColumn[]): Query {
-  return {
-    kind: 'query',
-    with: null,
-    body: {
-      kind: 'select',
-      distinct: null,
-      targets: columns.map((column) => ({
-        value: { kind: 'cast', arg: { kind: 'constant', constant: { kind: 'null' }, at: -1 }, type: typeOf(column), at: -1 },
-        label: column.name,
-        at: -1,
-      })),
-      from: [],
-      where: { kind: 'constant', constant: { kind: 'boolean', value: false }, at: -1 },
-      group: [],
-      groupDistinct: false,
-      having: null,
-      windows: [],
-    },
-    order: [],
-    limit: null,
-    offset: null,
-    withTies: false,
-  }
+  const targets = columns.map((column) => target({ kind: 'cast', arg: nothing(), type: typeOf(column), at: -1 }, column.name))
+  return selectQuery({ targets, from: [], where: constant({ kind: 'boolean', value: false }) })
 }
 
 function typeOf(column: DataColumn): TypeRef {

@@ -5,7 +5,7 @@ import { compare } from '../catalog/functions/comparisons.ts'
 import { columnClasses, type ColumnClasses } from './column-classes.ts'
 import type { Context } from './context.ts'
 import { lowerColumn } from './lower-column.ts'
-import { type ColumnRef, equated, indexesIn, type Scan, scansIn, type Source } from './relation.ts'
+import { type ColumnRef, equated, indexesIn, isPrivate, type Scan, scansIn, type Source } from './relation.ts'
 
 /** A relation in which every row belongs to one person. */
 export interface Owned {
@@ -68,16 +68,15 @@ function expandOwners(source: Source, context: Context): Source {
     case 'join':
       return { ...source, left: expandOwners(source.left, context), right: expandOwners(source.right, context) }
     case 'scan':
-      return chain(source.scan, context).source
+      return chain(source.scan, context)
   }
 }
 
-/** The scan with its owner chain, and the column that names the person. */
-function chain(scan: Scan, context: Context): { readonly source: Source; readonly person: ColumnRef | null } {
+/** The scan joined along its owner chain to the table that names the person. */
+function chain(scan: Scan, context: Context): Source {
   const table = scan.table
   let source: Source = { kind: 'scan', scan }
-  if (table.kind !== 'private') return { source, person: null }
-  if (table.owner.kind === 'column') return { source, person: { scan: scan.index, column: table.owner.column } }
+  if (table.kind !== 'private' || table.owner.kind === 'column') return source
   let from = scan
   for (const step of table.owner.steps) {
     const next = context.dataSet.tables.get(step.table)
@@ -88,10 +87,10 @@ function chain(scan: Scan, context: Context): { readonly source: Source; readonl
     source = { kind: 'join', type: 'inner', left: source, right: { kind: 'scan', scan: hidden }, on: [on], at: scan.at }
     from = hidden
   }
-  return { source, person: { scan: from.index, column: table.owner.person } }
+  return source
 }
 
-export function columnAt(scan: Scan, name: string): Scalar {
+function columnAt(scan: Scan, name: string): Scalar {
   const column = scan.table.columns.get(name)
   check(column !== undefined, `table has the column ${name}`)
   return lowerColumn(scan.index, column, scan.at)
@@ -114,7 +113,7 @@ function learnFrom(source: Source, builder: Builder): void {
     case 'join': {
       learnFrom(source.left, builder)
       learnFrom(source.right, builder)
-      const padding = source.type === 'left' && !hasPerson(source.left) && hasPerson(source.right)
+      const padding = source.type === 'left' && !isPrivate(source.left) && isPrivate(source.right)
       if (source.type === 'inner' || padding) return learn(source.on, builder.classes)
       const inside = indexesIn(source.right)
       for (const test of source.on) {
@@ -126,11 +125,6 @@ function learnFrom(source: Source, builder: Builder): void {
       }
     }
   }
-}
-
-function hasPerson(source: Source): boolean {
-  for (const scan of scansIn(source)) if (scan.table.kind === 'private') return true
-  return false
 }
 
 /** Two scans of one table that agree on a unique column are the same row, so they have the same owner. */
@@ -164,13 +158,13 @@ function walk(source: Source, builder: Builder): Step {
 function join(source: Extract<Source, { kind: 'join' }>, builder: Builder): Step {
   const [left, right] = [walk(source.left, builder), walk(source.right, builder)]
   const joined: Source = { ...source, left: left.source, right: right.source }
-  if (left.person === null && right.person === null) return hasPerson(source) ? { source: joined, person: chainEnd(source) } : { source: joined, person: null }
+  if (left.person === null && right.person === null) return isPrivate(source) ? { source: joined, person: chainEnd(source) } : { source: joined, person: null }
   if (right.person === null) {
     // the end of an owner chain carries the person of the whole chain
     return { source: joined, person: left.person }
   }
   if (left.person === null) {
-    if (!hasPerson(source.left)) {
+    if (!isPrivate(source.left)) {
       if (source.type === 'left') for (const index of indexesIn(source.right)) builder.padded.add(index)
       return { source: { ...joined, type: 'inner' }, person: right.person }
     }
@@ -195,20 +189,16 @@ function samePerson(a: ColumnRef, b: ColumnRef, source: Extract<Source, { kind: 
   if (builder.classes.same(a, b)) return true
   if (source.type !== 'left') return false
   const matched = columnClasses()
-  for (const test of source.on) {
-    const pair = equated(test)
-    if (pair !== null) matched.merge(pair[0], pair[1])
-  }
+  learn(source.on, matched)
+  const first = new Map<string, ColumnRef>()
   for (const scan of scansIn(source))
-    for (const column of scan.table.columns.keys())
-      for (const other of scansIn(source))
-        for (const name of other.table.columns.keys()) {
-          const [x, y] = [
-            { scan: scan.index, column },
-            { scan: other.index, column: name },
-          ]
-          if (builder.classes.same(x, y)) matched.merge(x, y)
-        }
+    for (const column of scan.table.columns.keys()) {
+      const ref = { scan: scan.index, column }
+      const name = builder.classes.find(ref)
+      const known = first.get(name)
+      if (known === undefined) first.set(name, ref)
+      else matched.merge(known, ref)
+    }
   // a matched row has a row of every scan that its condition equates, so what holds on rows of that scan holds here
   const present = new Set(source.on.flatMap((test) => (equated(test) ?? []).map((ref) => ref.scan)))
   for (const [from, to] of builder.directed) if (present.has(from.scan)) matched.merge(from, to)

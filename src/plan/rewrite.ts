@@ -1,5 +1,5 @@
 import { check } from '../base/check.ts'
-import { call, cast, column, text } from '../catalog/build.ts'
+import { call, cast, column, functionItem, hedgerowCall, selectQuery, target, text } from '../catalog/build.ts'
 import { printQuery, printStatement } from '../sql/print.ts'
 import { mapExpr } from '../sql/walk.ts'
 import { mapQuery } from '../sql/walk-query.ts'
@@ -22,6 +22,11 @@ export function blockText(block: CutBlock, types: BlockTypes): string {
   }
   const inner = (q: Query): Query => mapQuery(q, { expr, query: inner })
   return printQuery(inner(block.query))
+}
+
+/** The block's text before it is described: its parameters are of no type yet. */
+export function openText(block: CutBlock): string {
+  return blockText(block, { parameters: [], columns: [] })
 }
 
 /** The statement's text with a call of hedgerow.pull in place of each block; everything else is the analyst's own SQL over released rows. */
@@ -80,75 +85,18 @@ function pull(block: CutBlock, types: BlockTypes, blockSql: string, siblings: Ex
     type: { name: ['pg_catalog', 'text'], modifiers: [], array: [-1], setof: false },
     at: -1,
   }
-  const pulled: Expr = { ...call('pull', [text(blockSql), call('jsonb_build_array', args), siblings, names]), name: ['hedgerow', 'pull'] }
-  return {
-    kind: 'function',
-    functions: [{ call: call('jsonb_to_recordset', [pulled]), definitions: [] }],
-    rowsFrom: false,
-    lateral: false,
-    ordinality: false,
-    alias: null,
-    definitions: types.columns,
-    at: -1,
-  }
+  const pulled: Expr = hedgerowCall('pull', [text(blockSql), call('jsonb_build_array', args), siblings, names])
+  return functionItem(call('jsonb_to_recordset', [pulled]), null, types.columns)
 }
 
 /** A statement that fails in analysis, named by `marker`: the lobby's complaint about it is swapped for a refusal. */
 export function refusedText(marker: string): string {
-  const query: Query = {
-    kind: 'query',
-    with: null,
-    body: {
-      kind: 'select',
-      distinct: null,
-      targets: [{ value: { ...call(marker, []), name: ['hedgerow', marker] }, label: '', at: -1 }],
-      from: [],
-      where: null,
-      group: [],
-      groupDistinct: false,
-      having: null,
-      windows: [],
-    },
-    order: [],
-    limit: null,
-    offset: null,
-    withTies: false,
-  }
-  return printQuery(query)
+  return printQuery(selectQuery({ targets: [target(hedgerowCall(marker, []), '')], from: [] }))
 }
 
 /** EXPLAIN of a private statement: the lines come from Hedgerow, in PostgreSQL's own column. `parameters` are the types of the statement's, in order. */
 export function explainText(statement: string, parameters: readonly TypeRef[]): string {
   const args = parameters.map((type, i): Expr => ({ kind: 'cast', arg: { kind: 'parameter', number: i + 1, at: -1 }, type, at: -1 }))
-  const query: Query = {
-    kind: 'query',
-    with: null,
-    body: {
-      kind: 'select',
-      distinct: null,
-      targets: [{ value: column('plan', 'QUERY PLAN'), label: 'QUERY PLAN', at: -1 }],
-      from: [
-        {
-          kind: 'function',
-          functions: [{ call: { ...call('explain', [text(statement), call('jsonb_build_array', args)]), name: ['hedgerow', 'explain'] }, definitions: [] }],
-          rowsFrom: false,
-          lateral: false,
-          ordinality: false,
-          alias: { name: 'plan', columns: ['QUERY PLAN'] },
-          definitions: [],
-          at: -1,
-        },
-      ],
-      where: null,
-      group: [],
-      groupDistinct: false,
-      having: null,
-      windows: [],
-    },
-    order: [],
-    limit: null,
-    offset: null,
-    withTies: false,
-  }
-  return printQuery(query)
+  const lines = functionItem(hedgerowCall('explain', [text(statement), call('jsonb_build_array', args)]), { name: 'plan', columns: ['QUERY PLAN'] })
+  return printQuery(selectQuery({ targets: [target(column('plan', 'QUERY PLAN'), 'QUERY PLAN')], from: [lines] }))
 }

@@ -11,7 +11,7 @@ import { cutStatement } from '../../src/plan/cut.ts'
 import { listedRows } from '../../src/plan/fan-out.ts'
 import type { Limits } from '../../src/plan/limits.ts'
 import type { ReleasePlan } from '../../src/plan/release-plan.ts'
-import { blockText } from '../../src/plan/rewrite.ts'
+import { openText } from '../../src/plan/rewrite.ts'
 import type { DataSet } from '../../src/policy/data-set.ts'
 import { fit } from '../../src/policy/fit.ts'
 import { readDataSetFile } from '../../src/policy/read.ts'
@@ -150,7 +150,7 @@ export class Harbour {
       if (only.refusal !== null) return { kind: 'refused', why: only.refusal.code }
       const blocks: Asked[] = []
       for (const block of cutStatement(only.statement, loaded.dataSet).blocks) {
-        const text = blockText(block, { parameters: [], columns: [] })
+        const text = openText(block)
         await this.#here.query(`PREPARE fuzz AS ${text}`)
         await this.#here.query('DEALLOCATE fuzz')
         const read = await this.#parser.readText(text)
